@@ -1,0 +1,59 @@
+import type { Shift, State } from '../regime/regime.ts'
+
+/** Life cycle, terms of ISA-18.2. */
+export const alertStates = [
+  'unacknowledged',
+  'acknowledged',
+  'returned-to-normal',
+  'shelved',
+  'suppressed-by-design',
+  'out-of-service',
+] as const
+export type AlertState = (typeof alertStates)[number]
+
+/** What the pipeline tells the alerts room. */
+export type AlertEvent =
+  | {
+      readonly type: 'shift'
+      readonly ensemble: string
+      readonly title: string
+      readonly shift: Shift
+      readonly now: number
+    }
+  | {
+      readonly type: 'steady'
+      readonly ensemble: string
+      readonly shift: number
+      readonly time: number
+      readonly now: number
+    }
+  | { readonly type: 'trial'; readonly now: number }
+
+/** One alert per ensemble and shift. Times in milliseconds since 1970 UTC. */
+export interface Alert {
+  /** Stable over all versions and routes: `ENSEMBLE/SHIFT/START`, the start as RFC 3339. */
+  readonly id: string
+  /** Grows by one with every change of the alert. */
+  readonly version: number
+  readonly ensemble: string
+  readonly title: string
+  readonly state: AlertState
+  /** Set when the regime is steady again. */
+  readonly ended: number | null
+  readonly trial: boolean
+  /** One plain sentence: what changed, since when, who carries it. */
+  readonly sentence: string
+  /** Numbers and cautions, line by line. */
+  readonly details: readonly string[]
+  readonly cautions: readonly string[]
+  readonly runbook: string | null
+  readonly page: string | null
+  readonly shift: Shift | null
+  readonly raised: number
+}
+
+/** The last word on an ensemble, for heartbeats. */
+export interface Pulse {
+  readonly ensembles: Readonly<Record<string, State>>
+  readonly now: number
+}
