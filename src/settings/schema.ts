@@ -23,16 +23,12 @@ export const clockSchema = z.strictObject({
     .union([z.literal('row'), duration])
     .meta({ description: 'Length of a frame, or `row`: every distinct time stamp is a frame.' }),
   lateness: duration.default(0),
-  'stale-after': duration
-    .optional()
-    .meta({
-      description: 'A value older than this is missing. Default: 12 steps; with `step: row` one row.',
-    }),
-  'idle-after': duration
-    .default(30_000)
-    .meta({
-      description: 'A source that is read up to its end and silent so long no longer holds the clock.',
-    }),
+  'stale-after': duration.optional().meta({
+    description: 'A value older than this is missing. Default: 12 steps; with `step: row` one row.',
+  }),
+  'idle-after': duration.default(30_000).meta({
+    description: 'A source that is read up to its end and silent so long no longer holds the clock.',
+  }),
   ahead: duration
     .default(86_400_000)
     .meta({ description: 'Readings further than this ahead of the present are dropped.' }),
@@ -99,12 +95,10 @@ export const ensembleSchema = z.strictObject({
       }),
     ])
     .prefault({ 'false-pages': '1 per 90d' }),
-  'stuck-after': duration
-    .optional()
-    .meta({
-      description:
-        'A signal whose value has not moved for so long is stuck. Default: learnt from its own history.',
-    }),
+  'stuck-after': duration.optional().meta({
+    description:
+      'A signal whose value has not moved for so long is stuck. Default: learnt from its own history.',
+  }),
   planned: z.array(plannedSchema).max(10_000).default([]),
   runbook: z.url().optional(),
 })
@@ -140,11 +134,9 @@ export const pointersSchema = z.strictObject({
   time: text,
   value: text,
   unit: z.enum(['rfc3339', 's', 'ms', 'us', 'ns']).default('rfc3339'),
-  readings: text
-    .optional()
-    .meta({
-      description: 'Pointer to an array of readings inside one message; "" where the message is the array.',
-    }),
+  readings: text.optional().meta({
+    description: 'Pointer to an array of readings inside one message; "" where the message is the array.',
+  }),
 })
 
 export const formatSchema = z.union([
