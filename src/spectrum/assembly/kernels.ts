@@ -1,0 +1,238 @@
+// Kernels of the symmetric eigenproblem for WebAssembly with 128-bit SIMD (AssemblyScript).
+// Pointers are byte offsets into the shared memory. A matrix has `ld` entries a row, ld a multiple of 4;
+// what lies beyond its order n holds zeros. Built by `npm run kernels`.
+
+// @ts-ignore: decorator
+@inline function pair(p: usize): v128 {
+  return v128.load(p)
+}
+// @ts-ignore: decorator
+@inline function put(p: usize, v: v128): void {
+  v128.store(p, v)
+}
+// @ts-ignore: decorator
+@inline function both(x: f64): v128 {
+  return f64x2.splat(x)
+}
+// @ts-ignore: decorator
+@inline function plus(a: v128, b: v128, c: v128): v128 {
+  return f64x2.add(c, f64x2.mul(a, b))
+}
+// @ts-ignore: decorator
+@inline function minus(a: v128, b: v128, c: v128): v128 {
+  return f64x2.sub(c, f64x2.mul(a, b))
+}
+// @ts-ignore: decorator
+@inline function lanes(v: v128): f64 {
+  return f64x2.extract_lane(v, 0) + f64x2.extract_lane(v, 1)
+}
+// @ts-ignore: decorator
+@inline function at(p: usize, i: i32): f64 {
+  return load<f64>(p + ((<usize>i) << 3))
+}
+// @ts-ignore: decorator
+@inline function set(p: usize, i: i32, x: f64): void {
+  store<f64>(p + ((<usize>i) << 3), x)
+}
+// @ts-ignore: decorator
+@inline function bytes(n: i32): usize {
+  return (<usize>n) << 3
+}
+// @ts-ignore: decorator
+@inline function padded(n: i32): i32 {
+  return (n + 3) & ~3
+}
+
+// Inner product of two vectors of n entries whose pads up to a multiple of 4 hold zeros.
+function dot(a: usize, b: usize, n: i32): f64 {
+  let s = both(0)
+  let t = both(0)
+  const end = bytes(padded(n))
+  for (let j: usize = 0; j < end; j += 32) {
+    s = plus(pair(a + j), pair(b + j), s)
+    t = plus(v128.load(a + j, 16), v128.load(b + j, 16), t)
+  }
+  return lanes(f64x2.add(s, t))
+}
+
+// One pass over the leading m × m lower triangle: A ← A − v wᵀ − w vᵀ and p = A x. The 2 × 2 blocks on the
+// diagonal are kept full.
+function updateAndMultiply(A: usize, ld: usize, m: i32, v: usize, w: usize, x: usize, p: usize): void {
+  const mp = padded(m)
+  memory.fill(p, 0, bytes(mp))
+  for (let i = 0; i < mp; i += 2) {
+    const r0 = A + <usize>i * ld
+    const r1 = r0 + ld
+    const v0 = both(at(v, i))
+    const v1 = both(at(v, i + 1))
+    const w0 = both(at(w, i))
+    const w1 = both(at(w, i + 1))
+    const x0 = both(at(x, i))
+    const x1 = both(at(x, i + 1))
+    let a0 = both(0)
+    let a1 = both(0)
+    const end = bytes(i)
+    for (let j: usize = 0; j < end; j += 16) {
+      const vj = pair(v + j)
+      const wj = pair(w + j)
+      const xj = pair(x + j)
+      const s = minus(v0, wj, minus(w0, vj, pair(r0 + j)))
+      put(r0 + j, s)
+      a0 = plus(s, xj, a0)
+      const t = minus(v1, wj, minus(w1, vj, pair(r1 + j)))
+      put(r1 + j, t)
+      a1 = plus(t, xj, a1)
+      put(p + j, plus(t, x1, plus(s, x0, pair(p + j))))
+    }
+    const vj = pair(v + end)
+    const wj = pair(w + end)
+    const xj = pair(x + end)
+    const s = minus(v0, wj, minus(w0, vj, pair(r0 + end)))
+    put(r0 + end, s)
+    const t = minus(v1, wj, minus(w1, vj, pair(r1 + end)))
+    put(r1 + end, t)
+    set(p, i, at(p, i) + lanes(plus(s, xj, a0)))
+    set(p, i + 1, at(p, i + 1) + lanes(plus(t, xj, a1)))
+  }
+}
+
+// Householder reduction of the symmetric A (order n, ld entries a row; the lower triangle is read, the 2 × 2
+// diagonal blocks must be full) to tridiagonal form with diagonal d[0..n-1] and couplings e[1..n-1], the
+// update fused with the next matrix-vector product (Dongarra, Sorensen & Hammarling 1989, arranged for one
+// pass). Row i of A keeps the Householder vector i (entries 0..i-1), tau[i] its factor. work: 4·ld entries.
+export function tridiagonalise(A: usize, n: i32, ldEntries: i32, d: usize, e: usize, tau: usize, work: usize): void {
+  const ld = bytes(ldEntries)
+  memory.fill(work, 0, 4 * ld)
+  let v = work
+  const w = work + ld
+  let x = work + 2 * ld
+  const p = work + 3 * ld
+  set(e, 0, 0)
+  set(tau, 0, 0)
+  for (let i = n - 1; i > 0; i--) {
+    const row = A + <usize>i * ld
+    const vi = both(at(v, i))
+    const wi = both(at(w, i))
+    const rowEnd = bytes(padded(i + 1))
+    for (let j: usize = 0; j < rowEnd; j += 16) {
+      put(row + j, minus(vi, pair(w + j), minus(wi, pair(v + j), pair(row + j))))
+    }
+    set(d, i, at(row, i))
+    set(v, i, 0)
+    set(w, i, 0)
+    memory.copy(x, row, bytes(i))
+    for (let j = i; j < padded(i) + 4 && j < ldEntries; j++) set(x, j, 0)
+    const alpha = at(x, i - 1)
+    set(x, i - 1, 0)
+    const tail = dot(x, x, i)
+    let t = 0.0
+    if (tail == 0) {
+      set(e, i, alpha)
+      memory.fill(x, 0, bytes(i))
+    } else {
+      const norm = Math.sqrt(alpha * alpha + tail)
+      const beta = alpha > 0 ? -norm : norm
+      t = (beta - alpha) / beta
+      const scale = both(1.0 / (alpha - beta))
+      const end = bytes(padded(i))
+      for (let j: usize = 0; j < end; j += 16) put(x + j, f64x2.mul(pair(x + j), scale))
+      set(e, i, beta)
+    }
+    set(tau, i, t)
+    set(x, i - 1, 1)
+    memory.copy(row, x, bytes(i))
+    if (i == 1) {
+      set(d, 0, at(A, 0) - 2 * at(v, 0) * at(w, 0))
+      return
+    }
+    updateAndMultiply(A, ld, i, v, w, x, p)
+    for (let j = i; j < padded(i); j++) set(p, j, 0)
+    const half = -0.5 * t * t * dot(p, x, i)
+    const tt = both(t)
+    const hh = both(half)
+    const end = bytes(padded(i))
+    for (let j: usize = 0; j < end; j += 16) put(w + j, plus(hh, pair(x + j), f64x2.mul(tt, pair(p + j))))
+    const swap = v
+    v = x
+    x = swap
+  }
+  set(d, 0, at(A, 0))
+}
+
+// Eigenvalues of the tridiagonal matrix, unordered, in d. Square-root-free implicit QL of Pal, Walker and
+// Kahan (Parlett, The Symmetric Eigenvalue Problem, 8.15), the two divisions of a step made independent.
+// e[i] couples i-1 and i on entry and is destroyed. Gives the number of sweeps, or -1 without convergence.
+export function eigenvalues(d: usize, e: usize, n: i32): i32 {
+  const eps = 1.1102230246251565e-16
+  const eps2 = eps * eps
+  for (let i = 1; i < n; i++) {
+    const c = at(e, i)
+    set(e, i - 1, c * c)
+  }
+  set(e, n - 1, 0)
+  let sweeps = 0
+  for (let l = 0; l < n; l++) {
+    for (;;) {
+      let m = l
+      for (; m < n - 1; m++) if (at(e, m) <= eps2 * Math.abs(at(d, m) * at(d, m + 1)) || at(e, m) < 1e-290) break
+      if (m == l) break
+      if (m < n - 1) set(e, m, 0)
+      if (++sweeps > 40 * n) return -1
+      let p = at(d, l)
+      const root = Math.sqrt(at(e, l))
+      let sigma = (at(d, l + 1) - p) / (2 * root)
+      let r = Math.sqrt(sigma * sigma + 1)
+      sigma = p - root / (sigma + (sigma < 0 ? -r : r))
+      let s = 0.0
+      let c = 1.0
+      let gamma = at(d, m) - sigma
+      p = gamma * gamma
+      for (let i = m - 1; i >= l; i--) {
+        const square = at(e, i)
+        const shifted = at(d, i) - sigma
+        r = p + square
+        if (i != m - 1) set(e, i + 1, s * r)
+        const before = c
+        const inverse = 1.0 / r
+        const ratio = r / p
+        c = p * inverse
+        s = square * inverse
+        const old = gamma
+        gamma = c * shifted - s * old
+        set(d, i + 1, old + (shifted + sigma - gamma))
+        p = p > 1e-290 ? gamma * gamma * ratio : c != 0 ? (gamma * gamma) / c : before * square
+      }
+      set(e, l, s * p)
+      set(d, l, sigma + gamma)
+    }
+  }
+  return sweeps
+}
+
+// A ← A + x xᵀ − y yᵀ on the lower triangle (the 4 × 4 diagonal blocks are kept full); order ld.
+export function rankTwo(A: usize, ldEntries: i32, x: usize, y: usize): void {
+  const ld = bytes(ldEntries)
+  for (let i = 0; i < ldEntries; i += 4) {
+    const r0 = A + <usize>i * ld
+    const r1 = r0 + ld
+    const r2 = r1 + ld
+    const r3 = r2 + ld
+    const x0 = both(at(x, i))
+    const x1 = both(at(x, i + 1))
+    const x2 = both(at(x, i + 2))
+    const x3 = both(at(x, i + 3))
+    const y0 = both(at(y, i))
+    const y1 = both(at(y, i + 1))
+    const y2 = both(at(y, i + 2))
+    const y3 = both(at(y, i + 3))
+    const end = bytes(i + 4)
+    for (let j: usize = 0; j < end; j += 16) {
+      const xj = pair(x + j)
+      const yj = pair(y + j)
+      put(r0 + j, minus(y0, yj, plus(x0, xj, pair(r0 + j))))
+      put(r1 + j, minus(y1, yj, plus(x1, xj, pair(r1 + j))))
+      put(r2 + j, minus(y2, yj, plus(x2, xj, pair(r2 + j))))
+      put(r3 + j, minus(y3, yj, plus(x3, xj, pair(r3 + j))))
+    }
+  }
+}
