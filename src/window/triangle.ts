@@ -1,0 +1,46 @@
+/**
+ * Symmetric matrices as packed lower triangles: entry (i, j), j ≤ i, lies at i(i+1)/2 + j. A row more is
+ * appended behind the others, so a matrix grows without moving an entry.
+ */
+export const triangleSize = (n: number): number => (n * (n + 1)) / 2
+
+/** S ← S + w·y yᵀ on the first n rows. */
+export function addOuter(s: Float64Array, y: Float64Array, n: number, w: number): void {
+  for (let i = 0, k = 0; i < n; i++) {
+    const f = w * y[i]!
+    if (f === 0) {
+      k += i + 1
+      continue
+    }
+    for (let j = 0; j <= i; j++) (s[k]! += f * y[j]!), k++
+  }
+}
+
+/** S ← S + y yᵀ − z zᵀ in one pass: one frame in, one out. */
+export function exchangeOuter(s: Float64Array, y: Float64Array, z: Float64Array, n: number): void {
+  for (let i = 0, k = 0; i < n; i++) {
+    const f = y[i]!
+    const g = z[i]!
+    if (f === 0 && g === 0) {
+      k += i + 1
+      continue
+    }
+    for (let j = 0; j <= i; j++, k++) s[k] = s[k]! + f * y[j]! - g * z[j]!
+  }
+}
+
+/** S ← a·S + w·y yᵀ in one pass: one step of an exponential memory. */
+export function decayOuter(s: Float64Array, y: Float64Array, n: number, a: number, w: number): void {
+  for (let i = 0, k = 0; i < n; i++) {
+    const f = w * y[i]!
+    for (let j = 0; j <= i; j++, k++) s[k] = a * s[k]! + f * y[j]!
+  }
+}
+
+/** S ← (S − w·y yᵀ)/a: takes the last step of `decayOuter` back. */
+export function undecayOuter(s: Float64Array, y: Float64Array, n: number, a: number, w: number): void {
+  for (let i = 0, k = 0; i < n; i++) {
+    const f = w * y[i]!
+    for (let j = 0; j <= i; j++, k++) s[k] = (s[k]! - f * y[j]!) / a
+  }
+}
