@@ -9,6 +9,7 @@ import { AlertmanagerProcess, heldAlerts } from './support/alertmanager.ts'
 import { openBrowser } from './support/browser.ts'
 import { KafkaBroker } from './support/kafka-broker.ts'
 import { createTopic, isAnswering, kafkaClient, uniqueName } from './support/kafka-client.ts'
+import { findPrograms } from './support/programs.ts'
 import { PrometheusProcess, promtool } from './support/prometheus.ts'
 import { Receiver } from './support/receiver.ts'
 
@@ -20,7 +21,7 @@ async function send(bootstrap: string, topic: string, values: readonly string[])
 }
 
 async function receive(bootstrap: string, topic: string, count: number): Promise<string[]> {
-  const consumer = kafkaClient(bootstrap).consumer({ groupId: uniqueName('reader') })
+  const consumer = kafkaClient(bootstrap).consumer({ groupId: uniqueName('reader'), maxWaitTimeInMs: 100 })
   const values: string[] = []
   await consumer.connect()
   await consumer.subscribe({ topic, fromBeginning: true })
@@ -160,6 +161,20 @@ test('the browser opens a page and runs its script', async () => {
   } finally {
     await browser.close()
   }
+})
+
+test('a program that cannot be had is reported with the ways to install it', async () => {
+  const wanted = {
+    title: 'Nothing',
+    variable: 'TAUTLINE_TEST_NOTHING',
+    names: ['tautline-no-such-program'],
+    debian: 'tautline-no-such-package',
+  }
+  const { found, missing } = await findPrograms({ wanted }, false)
+  expect(found).toEqual({})
+  expect(missing[0]).toBe(
+    'Nothing: put `tautline-no-such-program` on the PATH (Debian: apt-get install tautline-no-such-package) or its full path in TAUTLINE_TEST_NOTHING',
+  )
 })
 
 test('a service whose test process is killed ends too, and its scratch folder goes', async () => {

@@ -4,7 +4,7 @@ import { AlertmanagerProcess } from './support/alertmanager.ts'
 import { KafkaBroker } from './support/kafka-broker.ts'
 import { isAnswering } from './support/kafka-client.ts'
 import { kafkaJars } from './support/kafka-jars.ts'
-import { findPrograms, useContainerEngine, wantedPrograms } from './support/programs.ts'
+import { findPrograms, wantedPrograms } from './support/programs.ts'
 import type { KafkaTools } from './support/provided.ts'
 
 /**
@@ -55,8 +55,10 @@ async function findKafkaTools(engine: boolean): Promise<KafkaTools> {
 
 export default async function setup(project: TestProject): Promise<() => Promise<void>> {
   const engine = await engineAnswers()
-  useContainerEngine(engine)
-  const [kafkaTools, programs] = await Promise.all([findKafkaTools(engine), findPrograms(wantedPrograms)])
+  const [kafkaTools, programs] = await Promise.all([
+    findKafkaTools(engine),
+    findPrograms(wantedPrograms, engine),
+  ])
 
   const missing: string[] = [...programs.missing]
   const stated = process.env.TAUTLINE_TEST_KAFKA

@@ -13,15 +13,21 @@ export const cacheFolder = join(process.env.XDG_CACHE_HOME || join(homedir(), '.
 export const scratchFolder = (purpose: string): Promise<string> =>
   mkdtemp(join(tmpdir(), `tautline-${purpose}-`))
 
+export function isProgram(path: string): boolean {
+  try {
+    accessSync(path, constants.X_OK)
+    return true
+  } catch {
+    return false
+  }
+}
+
 /** Full path of the first of `names` that is on the PATH and may be run, or null. */
 export function findProgram(...names: string[]): string | null {
   for (const name of names)
     for (const folder of (process.env.PATH ?? '').split(delimiter)) {
       const path = join(folder, name)
-      try {
-        accessSync(path, constants.X_OK)
-        return path
-      } catch {}
+      if (isProgram(path)) return path
     }
   return null
 }

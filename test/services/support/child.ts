@@ -36,7 +36,7 @@ export class Child {
       stdio: ['pipe', 'ignore', 'ignore'],
     })
     this.#guard.stdin!.on('error', () => {})
-    // Neither may keep this process alive.
+    // Neither may keep this process alive, until it waits for their end.
     this.#process.unref()
     this.#guard.unref()
     this.exited = new Promise((resolve) => {
@@ -59,6 +59,7 @@ export class Child {
   /** SIGTERM, and SIGKILL when it has not ended after `graceMs`. */
   async stop(graceMs = 20_000): Promise<void> {
     if (!this.running) return
+    this.#process.ref()
     this.#process.kill('SIGTERM')
     const patience = new AbortController()
     const slow = sleep(graceMs, 'slow', { signal: patience.signal }).catch(() => null)
@@ -69,6 +70,7 @@ export class Child {
 
   /** SIGKILL: as a crash. */
   async kill(): Promise<void> {
+    this.#process.ref()
     if (this.running) this.#process.kill('SIGKILL')
     await this.exited
   }

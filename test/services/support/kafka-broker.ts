@@ -90,6 +90,9 @@ export class KafkaBroker {
       'transaction.state.log.num.partitions': '1',
       'group.initial.rebalance.delay.ms': '0',
       'auto.create.topics.enable': 'false',
+      // A broker that was killed is let in again only when its old session has run out.
+      'broker.session.timeout.ms': '2000',
+      'broker.heartbeat.interval.ms': '500',
       ...options.properties,
     }
     await writeFile(join(folder, 'server.properties'), propertiesText(properties))

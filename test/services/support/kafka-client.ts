@@ -12,7 +12,7 @@ export const kafkaClient = (bootstrap: string): Kafka =>
   })
 
 async function withAdmin<T>(bootstrap: string, work: (admin: Admin) => Promise<T>): Promise<T> {
-  const admin = kafkaClient(bootstrap).admin({ retry: { initialRetryTime: 50, retries: 8 } })
+  const admin = kafkaClient(bootstrap).admin()
   await admin.connect()
   try {
     return await work(admin)
@@ -28,8 +28,9 @@ export async function isAnswering(bootstrap: string): Promise<boolean> {
     logLevel: logLevel.NOTHING,
     connectionTimeout: 1000,
     requestTimeout: 2000,
+    retry: { retries: 0 },
   })
-  const admin = kafka.admin({ retry: { retries: 0 } })
+  const admin = kafka.admin()
   try {
     await admin.connect()
     const { brokers, controller } = await admin.describeCluster()

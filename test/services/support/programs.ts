@@ -1,7 +1,7 @@
 import { chmod, mkdir, mkdtemp, rename, rm, stat, writeFile } from 'node:fs/promises'
 import { basename, dirname, join } from 'node:path'
 import { GenericContainer } from 'testcontainers'
-import { alone, cacheFolder, findProgram, run, runOrThrow } from '../../support/host.ts'
+import { alone, cacheFolder, findProgram, isProgram, run, runOrThrow } from '../../support/host.ts'
 
 /** A program of another project that the tests need, and where it can come from. */
 export interface WantedProgram {
@@ -46,15 +46,9 @@ export const wantedPrograms = {
   },
 } as const satisfies Record<string, WantedProgram>
 
-/** Set by the set-up when a container engine answers. */
-let engine = false
-export const useContainerEngine = (present: boolean): void => {
-  engine = present
-}
-
 /** Takes a program out of its image into the cache folder; Linux only, since it then runs on this machine. */
 async function programFromImage(image: { name: string; path: string }): Promise<string | null> {
-  if (!engine || process.platform !== 'linux') return null
+  if (process.platform !== 'linux') return null
   const target = join(cacheFolder, image.name.replaceAll(/[/:]/g, '-'), basename(image.path))
   return alone('image-programs', async () => {
     if (await stat(target).catch(() => null)) return target
@@ -120,34 +114,41 @@ async function installDebian(packages: readonly string[]): Promise<void> {
   }
 }
 
-function fromEnvironment(wanted: WantedProgram): string | null {
-  const stated = process.env[wanted.variable]
-  if (!stated) return null
-  const found = findProgram(stated) ?? (findProgram(basename(stated)) === stated ? stated : null)
-  return found
-}
-
 export interface FoundPrograms<Name extends string> {
   readonly found: Readonly<Partial<Record<Name, string>>>
   /** One line for each program that could not be had. */
   readonly missing: readonly string[]
 }
 
-/** Finds or installs the wanted programs: environment, PATH, container image, Debian package. */
+/**
+ * Finds or installs the wanted programs: environment, PATH, container image (where `engine` says that a
+ * container engine answers), Debian package.
+ */
 export async function findPrograms<Name extends string>(
   wanted: Readonly<Record<Name, WantedProgram>>,
+  engine: boolean,
 ): Promise<FoundPrograms<Name>> {
   const names = Object.keys(wanted) as Name[]
   const found: Partial<Record<Name, string>> = {}
   const failures: string[] = []
   const look = (name: Name) => {
-    const path = fromEnvironment(wanted[name]) ?? findProgram(...wanted[name].names)
+    const path = findProgram(...wanted[name].names)
     if (path) found[name] = path
     return path !== null
   }
+  const wrong = names.filter((name) => {
+    const stated = process.env[wanted[name].variable]
+    if (stated && isProgram(stated)) found[name] = stated
+    return stated && !isProgram(stated)
+  })
+  if (wrong.length > 0)
+    return {
+      found,
+      missing: wrong.map((name) => `${wanted[name].variable} names no program that can be run`),
+    }
   for (const name of names) {
     const { image } = wanted[name]
-    if (look(name) || !image) continue
+    if (found[name] || look(name) || !image || !engine) continue
     const path = await programFromImage(image).catch((error) => {
       failures.push(`${image.name}: ${error}`)
       return null
