@@ -9,6 +9,29 @@ export const errorCatalogue = {
     sentence: 'The settings file cannot be read.',
     remedy: 'Give an existing YAML file with --settings FILE; config/ holds two to start from.',
   },
+  // store
+  'store-unopened': {
+    sentence: 'The store cannot be opened.',
+    remedy:
+      'Make sure that the folder of store.path exists or can be made, that the user of the monitor may write there, and that the disk has room.',
+  },
+  'store-foreign': {
+    sentence: 'The file at store.path is no store of this monitor.',
+    remedy: 'Give another store.path; the file is left as it is.',
+  },
+  'store-damaged': {
+    sentence: 'The store is damaged.',
+    remedy:
+      'Move the file away (with its -wal and -shm companions) and start again: the monitor then learns afresh from its feeds. Keep the file if you want to look for lost entries.',
+  },
+  'store-newer': {
+    sentence: 'The store was written by a later version of this monitor.',
+    remedy: 'Run that version or a later one, or give another store.path to start afresh.',
+  },
+  'checkpoint-unreadable': {
+    sentence: 'The checkpoint in the store cannot be read.',
+    remedy: 'Nothing needs doing: the monitor learns afresh from its feeds; journal and alerts are kept.',
+  },
   // command line
   usage: {
     sentence: 'The command line is not understood.',
