@@ -236,3 +236,22 @@ export function rankTwo(A: usize, ldEntries: i32, x: usize, y: usize): void {
     }
   }
 }
+
+// Vectors of the tridiagonal matrix (k rows of ld entries, pads zero) become vectors of A, by the Householder
+// vectors that `tridiagonalise` left in the rows of A: v ← (I − τ x xᵀ) v for i = 1 … n − 1.
+export function backTransform(A: usize, n: i32, ldEntries: i32, tau: usize, V: usize, k: i32): void {
+  const ld = bytes(ldEntries)
+  for (let i = 1; i < n; i++) {
+    const t = at(tau, i)
+    if (t == 0) continue
+    const x = A + <usize>i * ld
+    const count = padded(i)
+    for (let j = i; j < count; j++) set(x, j, 0)
+    const end = bytes(count)
+    for (let r = 0; r < k; r++) {
+      const v = V + <usize>r * ld
+      const factor = both(t * dot(x, v, i))
+      for (let j: usize = 0; j < end; j += 16) put(v + j, minus(factor, pair(x + j), pair(v + j)))
+    }
+  }
+}
