@@ -46,7 +46,8 @@ export interface PlantedEvent {
   readonly to: number | null
   /**
    * `nothing`: no shift and no page. `finding`: a finding about the signal, no shift. `planned`: a new
-   * reference without a page. `shift`: a confirmed shift, a second one when it ends.
+   * reference without a page. `shift`: a confirmed shift, and a second one when it ends, unless a planned
+   * change covers that.
    */
   readonly expected: 'shift' | 'finding' | 'nothing' | 'planned'
   readonly kind: ShiftKind | null

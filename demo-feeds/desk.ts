@@ -136,10 +136,10 @@ export function* deskReadings(
   const sectorReturn = new Float64Array(sectors)
   let logVolatility = 0
 
-  const print = (i: number, at: number, price: number) => {
+  const delay = () => (random.uniform() < 0.03 ? Math.floor(random.uniform() * latenessMs * 0.95) : 0)
+  const print = (i: number, at: number, price: number, late: number) => {
     const time = Math.max(Math.floor(at), lastTime[i]! + 1)
     lastTime[i] = time
-    const late = random.uniform() < 0.03 ? Math.floor(random.uniform() * latenessMs * 0.95) : 0
     queue.put(i, time, Math.round(price * 1000) / 1000, time + late)
   }
 
@@ -167,14 +167,14 @@ export function* deskReadings(
         logPrice[i]! += sigma[i]! * amplitude * (Math.sqrt(toMarket) * market + partners + own)
         while (nextTick[i]! < end) {
           const side = random.bits() & 1 ? halfSpread[i]! : -halfSpread[i]!
-          print(i, nextTick[i]!, firstPrice[i]! * Math.exp(logPrice[i]! + side))
+          print(i, nextTick[i]!, firstPrice[i]! * Math.exp(logPrice[i]! + side), delay())
           nextTick[i]! += random.exponential() / (rate[i]! * busy)
         }
       }
     }
     for (const name of flash?.signals ?? []) {
       const i = deskSignals.indexOf(name)
-      print(i, open + stepMs - 1, firstPrice[i]! * Math.exp(logPrice[i]!) * 0.88)
+      print(i, open + stepMs - 1, firstPrice[i]! * Math.exp(logPrice[i]!) * 0.88, 0)
     }
     yield queue.take(frame, open + stepMs)
   }

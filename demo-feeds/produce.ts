@@ -1,3 +1,4 @@
+import { realpathSync } from 'node:fs'
 import { setTimeout as sleep } from 'node:timers/promises'
 import { pathToFileURL } from 'node:url'
 import { parseArgs } from 'node:util'
@@ -110,7 +111,7 @@ async function main(args: readonly string[]): Promise<void> {
   console.error(`${sent} readings sent to ${values.topic}`)
 }
 
-if (process.argv[1] && import.meta.url === pathToFileURL(process.argv[1]).href)
+if (process.argv[1] && import.meta.url === pathToFileURL(realpathSync(process.argv[1])).href)
   await main(process.argv.slice(2)).catch((error: unknown) => {
     console.error(`${error instanceof Error ? error.message : error}\n\n${help}`)
     process.exitCode = 1

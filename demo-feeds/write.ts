@@ -1,4 +1,4 @@
-import { createWriteStream } from 'node:fs'
+import { createWriteStream, realpathSync } from 'node:fs'
 import { Readable } from 'node:stream'
 import { pipeline } from 'node:stream/promises'
 import { pathToFileURL } from 'node:url'
@@ -41,7 +41,7 @@ export async function write(args: readonly string[]): Promise<void> {
   else await pipeline(text, file)
 }
 
-if (process.argv[1] && import.meta.url === pathToFileURL(process.argv[1]).href)
+if (process.argv[1] && import.meta.url === pathToFileURL(realpathSync(process.argv[1])).href)
   await write(process.argv.slice(2)).catch((error: unknown) => {
     console.error(`${error instanceof Error ? error.message : error}\n\n${help}`)
     process.exitCode = 1
