@@ -25,6 +25,16 @@ export interface Observation {
   readonly bulk: Bulk | null
   readonly window: { readonly frames: number; readonly effective: number }
   readonly certificate: number | null
+  /**
+   * With `reference: { lagged }`: matrix and spectrum of the signals `active` in the window that ended so
+   * many frames ago, null until it is full. `signals`: which of them took part in that window (left out:
+   * all); the others are not compared. Left out altogether for every other kind of reference.
+   */
+  readonly reference?: {
+    readonly matrix: Float64Array
+    readonly spectrum: Spectrum
+    readonly signals?: Int32Array
+  } | null
 }
 
 export interface Distance {
@@ -37,7 +47,10 @@ export interface Distance {
 }
 
 export interface Evidence {
-  /** Evidence over its limit; 1 and more is beyond it. */
+  /**
+   * Evidence over its limit; 1 and more is beyond it. Where the statistic's level at rest is known, both
+   * are counted from there, so that rest is near 0.
+   */
   readonly ratio: number
   /** Name of the statistic that carries it, kebab-case. */
   readonly statistic: string
@@ -98,7 +111,7 @@ export interface Transition {
 
 export interface Verdict {
   readonly state: State
-  /** While learning: frames still wanted, of how many. */
+  /** While a reference is being learnt (also anew, after a shift): frames had, of how many wanted. */
   readonly learning: { readonly have: number; readonly want: number } | null
   readonly distance: Distance | null
   readonly evidence: Evidence | null

@@ -12,7 +12,7 @@ export function addOuter(s: Float64Array, y: Float64Array, n: number, w: number)
       k += i + 1
       continue
     }
-    for (let j = 0; j <= i; j++) (s[k]! += f * y[j]!), k++
+    for (let j = 0; j <= i; j++, k++) s[k]! += f * y[j]!
   }
 }
 

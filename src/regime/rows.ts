@@ -1,0 +1,70 @@
+import { MomentEstimator } from '../window/moment-estimator.ts'
+
+/** Standardised frames of n signals, row by row; a missing entry is 0 with `present` 0. */
+export interface Rows {
+  readonly n: number
+  readonly count: number
+  readonly values: Float64Array
+  readonly present: Uint8Array
+}
+
+export type Scale = 'correlation' | 'covariance'
+
+/**
+ * Matrix of the rows in the order given, n × n row-major: correlation, or covariance in the rows' own unit.
+ * With `decay` the last row weighs most.
+ */
+export function matrixOf(rows: Rows, order: Iterable<number>, scale: Scale, decay: number | null = null) {
+  const n = rows.n
+  const moments = new MomentEstimator(decay)
+  for (const row of order) {
+    moments.push(rows.values.subarray(row * n, row * n + n), rows.present.subarray(row * n, row * n + n))
+  }
+  const out = new Float64Array(n * n)
+  const every = Int32Array.from({ length: n }, (_, i) => i)
+  if (scale === 'correlation') moments.correlation(out, every)
+  else moments.covariance(out, every, new Float64Array(n).fill(1))
+  return out
+}
+
+export function* range(count: number, from = 0): Generator<number> {
+  for (let k = from; k < count; k++) yield k
+}
+
+/** Mean square of each row over its present entries. */
+export function energiesOf(rows: Rows): Float64Array {
+  const energies = new Float64Array(rows.count)
+  for (let row = 0; row < rows.count; row++) {
+    let sum = 0
+    let present = 0
+    for (let k = row * rows.n; k < (row + 1) * rows.n; k++) {
+      sum += rows.values[k]! ** 2
+      present += rows.present[k]!
+    }
+    energies[row] = present > 0 ? sum / present : 0
+  }
+  return energies
+}
+
+/** The q-quantile by rank, 0 of an empty list. */
+export function quantile(values: Float64Array, q: number): number {
+  const sorted = values.slice().sort()
+  return sorted[Math.min(sorted.length - 1, Math.floor(q * sorted.length))] ?? 0
+}
+
+/**
+ * The rows with no frame louder than `spread` times the median one: louder frames are scaled down to that.
+ * A frame of energy e moves a matrix of T frames by e·n/T at most, so no single frame (nor a loud handful)
+ * carries a departure in what comes out; a lasting change leaves energies as they are.
+ */
+export function bounded(rows: Rows, spread: number): Rows {
+  const energies = energiesOf(rows)
+  const cap = spread * quantile(energies, 0.5)
+  const values = rows.values.slice()
+  for (let row = 0; row < rows.count; row++) {
+    if (!(energies[row]! > cap)) continue
+    const factor = Math.sqrt(cap / energies[row]!)
+    for (let k = row * rows.n; k < (row + 1) * rows.n; k++) values[k]! *= factor
+  }
+  return { ...rows, values }
+}
