@@ -32,6 +32,39 @@ export const errorCatalogue = {
     sentence: 'The checkpoint in the store cannot be read.',
     remedy: 'Nothing needs doing: the monitor learns afresh from its feeds; journal and alerts are kept.',
   },
+  // alerts
+  'act-refused': {
+    sentence: 'The alert does not allow this act now.',
+    remedy: 'Look at the state of the alert on the page or with `tautline explain`, then choose another act.',
+  },
+  'alert-unknown': {
+    sentence: 'There is no alert of that name.',
+    remedy: 'Name an alert as the page and `tautline explain` show it: ENSEMBLE/SHIFT/START.',
+  },
+  'route-url': {
+    sentence: 'The address of the route cannot be used.',
+    remedy:
+      'Give an http or https address without a user name or password in it; Alertmanager routes take them as username and password.',
+  },
+  'route-secret': {
+    sentence: 'The secret of the webhook cannot be used.',
+    remedy:
+      'Give whsec_ followed by base64 of at least 24 bytes, or any plain text of at least 24 characters; the receiver needs the same.',
+  },
+  'route-label': {
+    sentence: 'A label of the route is one that the monitor sets itself.',
+    remedy:
+      'Choose another name; alertname, ensemble, kind and shift tell alerts apart and cannot be changed.',
+  },
+  // regime
+  'reference-unreadable': {
+    sentence: 'The reference file cannot be used.',
+    remedy: 'Write it anew with `tautline explain --reference`, or give another kind of reference.',
+  },
+  'limit-unknown': {
+    sentence: 'An explicit limit names a statistic that does not exist.',
+    remedy: 'Use leading-share, spectral-distance, frobenius or partner-distance.',
+  },
   // command line
   usage: {
     sentence: 'The command line is not understood.',
