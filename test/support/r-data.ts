@@ -7,7 +7,7 @@ import { gunzipSync, inflateSync } from 'node:zlib'
  */
 
 export type RColumn = (number | string | null)[]
-export interface RVector {
+interface RVector {
   readonly items: readonly RItem[]
   readonly attributes: ReadonlyMap<string, RItem>
 }
