@@ -50,7 +50,50 @@ export interface Alert {
   readonly page: string | null
   readonly shift: Shift | null
   readonly raised: number
+  /** What made this version. */
+  readonly change?: Change
+  /** Who has taken note of it, and when. */
+  readonly acknowledged?: { readonly by: string; readonly at: number } | null
+  /** Set while it calls nobody: shelved, suppressed by design or out of service. */
+  readonly withheld?: Withheld | null
 }
+
+export const changes = [
+  'confirmed',
+  'ended',
+  'acknowledged',
+  'shelved',
+  'suppressed',
+  'taken-out-of-service',
+  'returned-to-service',
+  'trial',
+] as const
+
+/** `at` is the moment by the wall clock, milliseconds since 1970 UTC. */
+export interface Change {
+  readonly what: (typeof changes)[number]
+  readonly at: number
+  /** The person who acted; null where the monitor itself did. */
+  readonly by: string | null
+  readonly reason: string | null
+}
+
+export interface Withheld {
+  /** The state to which it returns. */
+  readonly before: 'unacknowledged' | 'acknowledged'
+  readonly by: string
+  readonly reason: string
+  /** Shelving ends by itself; the other two by an act. */
+  readonly until: number | null
+}
+
+/** What a person may do with an alert. Times in milliseconds since 1970 UTC. */
+export type Act =
+  | { readonly type: 'acknowledge'; readonly by: string }
+  | { readonly type: 'shelve'; readonly by: string; readonly reason: string; readonly until: number }
+  | { readonly type: 'suppress'; readonly by: string; readonly reason: string }
+  | { readonly type: 'take-out-of-service'; readonly by: string; readonly reason: string }
+  | { readonly type: 'return-to-service'; readonly by: string }
 
 /** The last word on an ensemble, for heartbeats. */
 export interface Pulse {
