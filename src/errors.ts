@@ -41,11 +41,6 @@ export const errorCatalogue = {
     sentence: 'There is no alert of that name.',
     remedy: 'Name an alert as the page and `tautline explain` show it: ENSEMBLE/SHIFT/START.',
   },
-  'route-url': {
-    sentence: 'The address of the route cannot be used.',
-    remedy:
-      'Give an http or https address without a user name or password in it; Alertmanager routes take them as username and password.',
-  },
   'route-secret': {
     sentence: 'The secret of the webhook cannot be used.',
     remedy:

@@ -3,14 +3,14 @@ import type { RouteSettings } from '../settings/schema.ts'
 import type { Alert } from './alert.ts'
 import { endToldForMs, trialAlert } from './alert-book.ts'
 import { identityLabels, type PostableAlert, postableAlert, postableHeartbeat } from './alertmanager-body.ts'
-import { post, routeUrl, tryHost } from './http-post.ts'
+import { post, tryHost } from './http-post.ts'
 import { type Attempt, type Message, type Route, sent, unsent } from './route.ts'
 
 export type AlertmanagerSettings = Extract<RouteSettings, { alertmanager: unknown }>
 
 /**
  * Alertmanager, interface version 2, every instance of a cluster. An alert counts as delivered when one
- * instance has taken it: the others hear of it with the next repetition. Fails with `route-url` or
+ * instance has taken it: the others hear of it with the next repetition. Fails with
  * `route-label`.
  */
 export function alertmanagerRoute(name: string, settings: AlertmanagerSettings): Result<Route> {
@@ -19,12 +19,7 @@ export function alertmanagerRoute(name: string, settings: AlertmanagerSettings):
   const reserved = identityLabels.find((label) => Object.hasOwn(labels, label))
   if (reserved !== undefined)
     return failed(new TautlineError('route-label', `Route ${name} sets ${reserved}.`))
-  const targets: URL[] = []
-  for (const text of urls) {
-    const base = routeUrl(text)
-    if (!base.ok) return base
-    targets.push(alertsUrl(base.value))
-  }
+  const targets = urls.map(alertsUrl)
   const headers: Record<string, string> = { 'content-type': 'application/json' }
   if (username !== undefined)
     headers.authorization = `Basic ${Buffer.from(`${username}:${password ?? ''}`).toString('base64')}`
@@ -97,7 +92,7 @@ function together(attempts: readonly Attempt[]): Attempt {
   })
 }
 
-function alertsUrl(base: URL): URL {
+function alertsUrl(base: string): URL {
   const url = new URL(base)
   url.pathname = `${url.pathname.replace(/\/+$/, '')}/api/v2/alerts`
   url.search = ''

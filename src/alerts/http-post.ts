@@ -1,12 +1,13 @@
 import { connect as connectPlain } from 'node:net'
 import { connect as connectTls } from 'node:tls'
-import { failed, ok, type Result, TautlineError } from '../errors.ts'
 import { type Attempt, sent, unsent } from './route.ts'
 
 /** How much of an answer is read, for the log. */
 const answerBytes = 2048
 /** The longest wait that another side may ask for. */
 const longestRetryAfterMs = 24 * 3_600_000
+/** IMF-fixdate of RFC 9110, section 5.6.7. */
+const httpDate = /^[A-Z][a-z]{2}, \d{2} [A-Z][a-z]{2} \d{4} \d{2}:\d{2}:\d{2} GMT$/
 
 export interface Post {
   readonly url: URL
@@ -62,24 +63,14 @@ export function tryHost(url: URL, timeoutMs: number, signal: AbortSignal): Promi
   })
 }
 
-/** An http or https address without credentials in it; fails with `route-url`. */
-export function routeUrl(text: string): Result<URL> {
-  const url = URL.canParse(text) ? new URL(text) : null
-  if (url === null) return failed(new TautlineError('route-url', 'It is no address.'))
-  if (url.protocol !== 'http:' && url.protocol !== 'https:')
-    return failed(new TautlineError('route-url', `Its scheme is ${url.protocol.slice(0, -1)}.`))
-  if (url.username !== '' || url.password !== '')
-    return failed(new TautlineError('route-url', `The address of ${url.host} holds a user name or password.`))
-  return ok(url)
-}
-
 /**
  * Milliseconds to wait after a Retry-After header (RFC 9110, section 10.2.3: seconds or an HTTP date), at
  * most a day; null where it is absent or cannot be read.
  */
 export function retryAfter(header: string | null, now: number): number | null {
   if (header === null) return null
-  const ms = /^\d{1,9}$/.test(header.trim()) ? Number(header) * 1000 : Date.parse(header) - now
+  const seconds = /^\d{1,9}$/.test(header)
+  const ms = seconds ? Number(header) * 1000 : httpDate.test(header) ? Date.parse(header) - now : Number.NaN
   return Number.isFinite(ms) ? Math.min(Math.max(ms, 0), longestRetryAfterMs) : null
 }
 

@@ -17,7 +17,7 @@ export interface RouteContext {
 
 /**
  * Makes a route from its settings, in which secrets are resolved already. Nothing is sent or connected yet.
- * Fails with `route-url`, `route-secret` or `route-label`.
+ * Fails with `route-secret` or `route-label`.
  */
 export function openRoute(name: string, settings: RouteSettings, context: RouteContext): Result<Route> {
   const source = context.source ?? '/tautline'
