@@ -9,6 +9,51 @@ export const errorCatalogue = {
     sentence: 'The settings file cannot be read.',
     remedy: 'Give an existing YAML file with --settings FILE; config/ holds two to start from.',
   },
+  'settings-wrong': {
+    sentence: 'The settings are wrong.',
+    remedy: 'Mend the lines named above; schema/settings.schema.json lets an editor help with it.',
+  },
+  'settings-syntax': {
+    sentence: 'The settings file is not readable YAML.',
+    remedy: 'Mend the YAML at this place; texts with any of : # { } [ ] , & * ! | > % @ belong in quotes.',
+  },
+  'settings-duplicate-key': {
+    sentence: 'A key stands twice.',
+    remedy: 'Keep one of the two.',
+  },
+  'settings-unknown-key': {
+    sentence: 'A key is not known.',
+    remedy: 'Use one of the allowed keys, or leave it out.',
+  },
+  'settings-missing-key': {
+    sentence: 'A key that must be given is missing.',
+    remedy: 'Add the key.',
+  },
+  'settings-wrong-value': {
+    sentence: 'A value is not allowed.',
+    remedy: 'Give a value of the allowed kind.',
+  },
+  'settings-unknown-name': {
+    sentence: 'A name refers to nothing.',
+    remedy: 'Use a name that these settings define, or define it.',
+  },
+  'settings-conflict': {
+    sentence: 'Two settings do not go together.',
+    remedy: 'Change one of the two.',
+  },
+  'settings-variable': {
+    sentence: 'A value cannot be taken from the environment.',
+    remedy: 'Set the variable NAME, or let NAME_FILE name a readable file that holds the value.',
+  },
+  'settings-secret': {
+    sentence: 'A secret is written in plain.',
+    remedy:
+      'Write "${NAME}" and set NAME, or NAME_FILE to a file with the secret; in plain it may stand only where all addresses concerned are loopback.',
+  },
+  'settings-exposed': {
+    sentence: 'The page would be open to everyone.',
+    remedy: 'Give page.token, as "${PAGE_TOKEN}", or listen on 127.0.0.1.',
+  },
   // store
   'store-unopened': {
     sentence: 'The store cannot be opened.',
