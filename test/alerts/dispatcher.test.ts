@@ -344,7 +344,7 @@ test('property: whatever fails and whenever the monitor crashes, each version ar
   await fc.assert(
     fc.asyncProperty(
       fc.array(fc.constantFrom(...fates), { maxLength: 40 }),
-      fc.array(fc.nat({ max: 90 }), { minLength: 3, maxLength: 3 }),
+      fc.array(fc.constantFrom(0, 5, 60), { minLength: 3, maxLength: 3 }),
       fc.double({ min: 0, max: 0.999, noNaN: true }),
       async (plan, pauses, chance) => {
         const { time, routes, store, parts } = house(
