@@ -41,7 +41,7 @@ function wholeFaults(settings: Settings, defined: DefinedNames): Fault[] {
   const pipes = Object.keys(feeds).filter((name) => 'stdin' in feeds[name]!)
   for (const name of pipes.slice(1))
     faults.push(conflict(['feeds', name], `Standard input is already read by the feed ${pipes[0]}.`))
-  if (!isLoopback(page.listen) && page.token === undefined)
+  if (hostAndPort(page.listen) !== null && !isLoopback(page.listen) && page.token === undefined)
     faults.push({
       code: 'settings-exposed',
       path: ['page', 'listen'],

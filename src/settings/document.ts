@@ -13,6 +13,8 @@ import { type Environment, substitute } from './substitution.ts'
 
 /** Most values that a file may hold, aliases written out. */
 const mostNodes = 200_000
+/** How a value is shown that is not there. */
+const nothing = 'nothing'
 
 interface Place {
   /** Offset of the key, or of the value where it has none. */
@@ -75,7 +77,8 @@ export class SettingsDocument {
       place = this.#places.get(keyText(up))
       if (up.length === 0) break
     }
-    const offset = place === undefined ? 0 : fault.at === 'key' ? place.key : place.value
+    const isAtKey = fault.at === 'key' || place?.shown === nothing
+    const offset = place === undefined ? 0 : isAtKey ? place.key : place.value
     return this.#problem(fault, offset, found)
   }
 
@@ -160,7 +163,7 @@ class Reader {
       const plain = typeof value === 'bigint' ? Number(value) : value
       this.places.set(keyText(path), {
         ...place,
-        shown: plain === null ? 'nothing' : String(plain),
+        shown: plain === null ? nothing : String(plain),
         names: [],
       })
       return plain

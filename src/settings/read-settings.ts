@@ -65,7 +65,7 @@ function checkTogether(document: SettingsDocument, shape: readonly Fault[], secr
   const sections: Record<string, unknown> = { ...whole }
   for (const { path } of shape) {
     const [section, name] = path
-    if (section === undefined) return []
+    if (section === undefined || (section === 'ensembles' && name === undefined)) return []
     const held = sections[section]
     if (named.some((one) => one === section) && typeof name === 'string' && isObject(held))
       sections[section] = Object.fromEntries(Object.entries(held).filter(([key]) => key !== name))

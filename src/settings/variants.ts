@@ -14,14 +14,16 @@ export function isExclusive(options: readonly ObjectOption[]): boolean {
   return new Set(marks).size === marks.length
 }
 
-/** The variant that was most likely meant, or null where no key tells. */
+/** The variant that was most likely meant, or null where no key tells; of equals the one named first. */
 export function likeliest(
   options: readonly ObjectOption[],
   value: Record<string, unknown>,
 ): ObjectOption | null {
   let best: ObjectOption | null = null
   let most = Number.NEGATIVE_INFINITY
-  for (const option of options) {
+  const keys = Object.keys(value)
+  const firstNamed = ({ required }: ObjectOption) => keys.findIndex((key) => required.includes(key))
+  for (const option of [...options].sort((a, b) => firstNamed(a) - firstNamed(b))) {
     const { marks, score } = rate(option, value)
     if (marks > 0 && score > most) {
       best = option
