@@ -58,20 +58,19 @@ export interface Alert {
   readonly withheld?: Withheld | null
 }
 
-export const changes = [
-  'confirmed',
-  'ended',
-  'acknowledged',
-  'shelved',
-  'suppressed',
-  'taken-out-of-service',
-  'returned-to-service',
-  'trial',
-] as const
+type ChangeWhat =
+  | 'confirmed'
+  | 'ended'
+  | 'acknowledged'
+  | 'shelved'
+  | 'suppressed'
+  | 'taken-out-of-service'
+  | 'returned-to-service'
+  | 'trial'
 
 /** `at` is the moment by the wall clock, milliseconds since 1970 UTC. */
 export interface Change {
-  readonly what: (typeof changes)[number]
+  readonly what: ChangeWhat
   readonly at: number
   /** The person who acted; null where the monitor itself did. */
   readonly by: string | null

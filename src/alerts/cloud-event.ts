@@ -8,7 +8,7 @@ import { largest } from './wording.ts'
 const carriersTold = 20
 
 /** Types of our events, reverse-DNS as CloudEvents asks. */
-export type EventType =
+type EventType =
   | 'io.tautline.shift.confirmed'
   | 'io.tautline.shift.changed'
   | 'io.tautline.shift.ended'

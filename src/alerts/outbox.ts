@@ -3,7 +3,7 @@ import type { Alert } from './alert.ts'
 import type { Message, Route } from './route.ts'
 
 /** One delivery for each new version and route, due at once; `now` in milliseconds since 1970 UTC. */
-export function deliveriesOf(
+function deliveriesOf(
   alerts: readonly Alert[],
   routes: readonly Pick<Route, 'name' | 'giveUpAfterMs'>[],
   now: number,

@@ -19,7 +19,8 @@ export type Attempt =
 
 /**
  * A way out for alerts. `now` is in milliseconds since 1970 UTC. No method throws; all give up when `signal`
- * is aborted. Sending the same message twice is harmless: receivers know versions by their id.
+ * is aborted. Sending the same message twice is harmless: receivers know versions by their id, and by the
+ * version a repetition that comes late.
  */
 export interface Route {
   readonly name: string

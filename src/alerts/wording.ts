@@ -14,11 +14,12 @@ export const quietCaution =
 
 /** One plain sentence: what changed, since when, who carries it; and, once it has ended, since when it is steady. */
 export function sentenceOf(title: string, shift: Shift, ended: number | null): string {
-  const change = `${whatChanged(shift, ended !== null)} since ${rfc3339(shift.start)}${shareMovement(shift)}`
-  const told = `${change}${whoCarries(shift)}`
+  const start = rfc3339(shift.start)
+  const change = whatChanged(shift, ended !== null)
+  const rest = `${shareMovement(shift)}${whoCarries(shift, ended !== null)}`
   return ended === null
-    ? `${plain(title)}: ${told}.`
-    : `${plain(title)} is steady again since ${rfc3339(ended)}; before, ${told}.`
+    ? `${plain(title)}: ${change} since ${start}${rest}.`
+    : `${plain(title)} has been steady again since ${rfc3339(ended)}; from ${start} on, ${change}${rest}.`
 }
 
 /** The numbers behind the sentence, line by line. */
@@ -49,14 +50,14 @@ export const largest = (carriers: readonly Carrier[], count: number): readonly C
   [...carriers].sort((a, b) => Math.abs(b.share) - Math.abs(a.share)).slice(0, count)
 
 function whatChanged(shift: Shift, past: boolean): string {
-  const move = past ? 'moved' : 'move'
+  const have = past ? 'had' : 'have'
   switch (shift.kind) {
     case 'strength': {
       const how = compare(shift.shareBefore, shift.shareAfter, 'more strongly', 'more weakly')
-      return `the same signals ${move} together ${how ?? 'with another strength'}`
+      return `the same signals ${have} moved together ${how ?? 'with another strength'}`
     }
     case 'partners':
-      return `other signals ${move} together than before`
+      return `other signals ${have} moved together than before`
     case 'amplitude': {
       const how = compare(
         total(shift.spectrumBefore),
@@ -64,11 +65,12 @@ function whatChanged(shift: Shift, past: boolean): string {
         'more widely',
         'less widely',
       )
-      return `the signals ${move} ${how ?? 'by other amounts'}, with the same partners`
+      return `the same partners ${have} moved ${how ?? 'by other amounts'}`
     }
     case 'one-signal': {
       const name = largest(shift.carriers, 1)[0]?.signal
-      return `one signal alone${name === undefined ? '' : `, ${plain(name)},`} ${past ? 'moved' : 'moves'} otherwise than before`
+      const who = name === undefined ? 'one signal' : plain(name)
+      return `${who} alone ${past ? 'had' : 'has'} moved otherwise than before`
     }
   }
 }
@@ -83,16 +85,16 @@ function shareMovement({ kind, shareBefore, shareAfter }: Shift): string {
   return ` (the share of the leading mode ${way} from ${from} % to ${to} %)`
 }
 
-function whoCarries(shift: Shift): string {
+function whoCarries(shift: Shift, past: boolean): string {
   if (shift.kind === 'one-signal') return ''
   const first = largest(
     shift.carriers.filter(({ share }) => share > 0),
     3,
   )
-  if (first.length === 0) return '; no signal stands out as its carrier'
+  if (first.length === 0) return `; no signal ${past ? 'stood' : 'stands'} out as its carrier`
   const names = list(first.map(({ signal }) => plain(signal)))
   const part = first.reduce((sum, { share }) => sum + share, 0)
-  const carry = first.length === 1 ? 'carries' : 'carry'
+  const carry = past ? 'carried' : first.length === 1 ? 'carries' : 'carry'
   return part > 0.5 ? `; ${names} ${carry} most of it` : `; ${names} ${carry} the largest parts of it`
 }
 

@@ -23,12 +23,12 @@ export const migrations: readonly string[] = [
     route TEXT NOT NULL,
     alert TEXT NOT NULL,
     version INTEGER NOT NULL,
-    payload TEXT NOT NULL,
     created REAL NOT NULL,
     attempts INTEGER NOT NULL,
     not_before REAL NOT NULL,
     give_up_at REAL NOT NULL,
-    last_error TEXT
+    last_error TEXT,
+    payload TEXT NOT NULL
   ) STRICT, WITHOUT ROWID;
   CREATE INDEX outbox_order ON outbox (route, alert, version);
 

@@ -89,12 +89,12 @@ export class SqliteStore implements Store {
           delivery.route,
           delivery.alert,
           delivery.version,
-          toJson(delivery.payload),
           delivery.created,
           delivery.attempts,
           delivery.notBefore,
           delivery.giveUpAt,
           delivery.lastError,
+          toJson(delivery.payload),
         )
     })
   }
@@ -102,13 +102,14 @@ export class SqliteStore implements Store {
   /** Routes take turns, so that a route with much that waits leaves room for the others within `limit`. */
   due(now: number, limit: number): readonly Delivery[] {
     return this.#all<OutboxRow>(
-      `SELECT * FROM (
-         SELECT *, row_number() OVER (PARTITION BY route ORDER BY not_before, created, key) AS turn
+      `SELECT outbox.* FROM (
+         SELECT key AS due, row_number() OVER (PARTITION BY route ORDER BY not_before, created, key) AS turn
          FROM outbox AS o
          WHERE not_before <= ? AND NOT EXISTS (
            SELECT 1 FROM outbox AS earlier
-           WHERE earlier.route = o.route AND earlier.alert = o.alert AND earlier.version < o.version))
-       ORDER BY turn, not_before, created, key LIMIT ?`,
+           WHERE earlier.route = o.route AND earlier.alert = o.alert AND earlier.version < o.version)
+         ORDER BY turn, not_before, created, key LIMIT ?)
+       JOIN outbox ON outbox.key = due ORDER BY turn, not_before, created, key`,
       now,
       limit,
     ).map(toDelivery)

@@ -10,13 +10,13 @@ const sentence = (over: Parameters<typeof shift>[0] = {}, ended: number | null =
 describe('the sentence says what changed, since when and who carries it', () => {
   test('strength, up', () => {
     expect(sentence()).toBe(
-      'Northern desk: the same signals move together more strongly since 2026-11-02T10:39:50Z (the share of the leading mode rose from 21 % to 38 %); QUAY and MAST carry most of it.',
+      'Northern desk: the same signals have moved together more strongly since 2026-11-02T10:39:50Z (the share of the leading mode rose from 21 % to 38 %); QUAY and MAST carry most of it.',
     )
   })
 
   test('strength, down', () => {
     expect(sentence({ shareBefore: 0.381, shareAfter: 0.213 })).toContain(
-      'move together more weakly since 2026-11-02T10:39:50Z (the share of the leading mode fell from 38 % to 21 %)',
+      'have moved together more weakly since 2026-11-02T10:39:50Z (the share of the leading mode fell from 38 % to 21 %)',
     )
   })
 
@@ -26,19 +26,19 @@ describe('the sentence says what changed, since when and who carries it', () => 
 
   test('partners', () => {
     expect(sentence({ kind: 'partners' })).toBe(
-      'Northern desk: other signals move together than before since 2026-11-02T10:39:50Z; QUAY and MAST carry most of it.',
+      'Northern desk: other signals have moved together than before since 2026-11-02T10:39:50Z; QUAY and MAST carry most of it.',
     )
   })
 
   test('amplitude, up and down after the sum of the spectrum', () => {
     const one = { kind: 'amplitude', spectrumBefore: [2, 1], spectrumAfter: [4, 2] } as const
-    expect(sentence(one)).toContain('the signals move more widely, with the same partners since')
+    expect(sentence(one)).toContain('the same partners have moved more widely since')
     expect(sentence({ ...one, spectrumAfter: [1, 0.5] })).toContain('less widely')
   })
 
   test('one signal', () => {
     expect(sentence({ kind: 'one-signal', carriers: [{ signal: 'PT-103', share: 0.97 }] })).toBe(
-      'Northern desk: one signal alone, PT-103, moves otherwise than before since 2026-11-02T10:39:50Z.',
+      'Northern desk: PT-103 alone has moved otherwise than before since 2026-11-02T10:39:50Z.',
     )
   })
 
@@ -51,7 +51,7 @@ describe('the sentence says what changed, since when and who carries it', () => 
 
   test('after the end: since when it is steady, and what was', () => {
     expect(sentence({}, at('11:30:00'))).toBe(
-      'Northern desk is steady again since 2026-11-02T11:30:00Z; before, the same signals moved together more strongly since 2026-11-02T10:39:50Z (the share of the leading mode rose from 21 % to 38 %); QUAY and MAST carry most of it.',
+      'Northern desk has been steady again since 2026-11-02T11:30:00Z; from 2026-11-02T10:39:50Z on, the same signals had moved together more strongly (the share of the leading mode rose from 21 % to 38 %); QUAY and MAST carried most of it.',
     )
   })
 })
