@@ -106,6 +106,19 @@ export const errorCatalogue = {
     remedy: 'Use leading-share, spectral-distance, frobenius or partner-distance.',
   },
   // command line
+  'nothing-to-explain': {
+    sentence: 'The store holds nothing of that name.',
+    remedy: 'Run `tautline explain` without a name for a list of what there is.',
+  },
+  'store-missing': {
+    sentence: 'There is no store yet.',
+    remedy:
+      'Run `tautline watch` or `tautline replay` with the same settings first; store.path names the file.',
+  },
+  defect: {
+    sentence: 'The monitor has a defect.',
+    remedy: 'Please report it with these lines; --log-level debug adds where it happened.',
+  },
   usage: {
     sentence: 'The command line is not understood.',
     remedy: 'Run `tautline --help` or `tautline COMMAND --help` for the options and examples.',
