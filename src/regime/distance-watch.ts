@@ -1,29 +1,19 @@
 import type { SymmetricSolver } from '../spectrum/spectrum.ts'
 import { FrameRing, type RingSnapshot } from '../window/frame-ring.ts'
-import { type ChangeMode, changeModes, newestHalf } from './change-modes.ts'
 import { Comparer, type Comparison } from './comparison.ts'
+import { type Confirmed, confirm } from './confirm.ts'
 import { type ExplicitLimits, type Reading, strongest, weigh } from './evidence.ts'
-import { Learner, type LearnerPlan, type LearnerSnapshot, type Learnt } from './learner.ts'
-import { rotationShare } from './measures.ts'
+import { Learner, type LearnerSnapshot, type Learnt } from './learner.ts'
+import { learningPlan, settleOf } from './learning-plan.ts'
 import { calmUnder, counted, nearFrom, noRuns, type Pace, paceOf, type Runs } from './pace.ts'
-import { type Reference, referenceFrom } from './reference.ts'
+import type { Reference } from './reference.ts'
 import { referenceOf } from './reference-record.ts'
-import type { Carrier, Observation, RegimeWatch, Shift, State, Transition, Verdict } from './regime.ts'
+import type { Observation, RegimeWatch, Shift, State, Transition, Verdict } from './regime.ts'
 import { type RememberedRegime, remember } from './remembered.ts'
 import type { Scale } from './rows.ts'
-import { lookAgain, type SecondLook } from './second-look.ts'
 import { reportShift } from './shift-report.ts'
-import { windowTail } from './tail.ts'
+import { percent, sentence, shown, sightOf } from './verdict-parts.ts'
 import type { WatchOptions } from './watch-options.ts'
-
-/** The newest half of the window must carry this part of its fair share of a departure. */
-const newestHalfWanted = 0.5
-const mostLeaders = 10
-/**
- * Share, W2 and Frobenius distance all follow the leading mode and page together; the partner distance is
- * beside it by construction. So the budget is divided in two.
- */
-const separateWatchers = 2
 
 /** What changes from frame to frame, apart from rings and learner: structured-clone-able. */
 interface Memory {
@@ -108,8 +98,9 @@ export class DistanceWatch implements RegimeWatch {
     this.#m.behind++
     this.#ring.push(o.cleaned, o.present)
     let ended = this.#followPlan(o)
-    if (!this.#m.planned) this.#learn(o)
-    const comparison = this.#compare(o)
+    const adopted = !this.#m.planned && this.#learn(o)
+    // In covariance scale the matrix in hand is still in the scales of the reference before.
+    const comparison = adopted && this.#scale === 'covariance' ? null : this.#compare(o)
     const known = this.#m.known
     let readings: readonly Reading[] = []
     let shift: Shift | null = null
@@ -118,7 +109,7 @@ export class DistanceWatch implements RegimeWatch {
       const decided = this.#decide(o, comparison, readings, known)
       shift = decided.shift
       ended ??= decided.ended
-    } else if (known !== null && o.spectrum !== null) ended ??= this.#missSignals(o)
+    } else if (known !== null && o.spectrum !== null && !adopted) ended ??= this.#missSignals(o)
     return this.#verdict(o, comparison, readings, shift, ended)
   }
 
@@ -169,7 +160,8 @@ export class DistanceWatch implements RegimeWatch {
     return ended
   }
 
-  #learn(o: Observation): void {
+  /** Learns on; true in the frame in which a reference is complete. */
+  #learn(o: Observation): boolean {
     const m = this.#m
     if (
       this.#learner === null &&
@@ -182,9 +174,9 @@ export class DistanceWatch implements RegimeWatch {
     }
     this.#learner?.push(o.cleaned, o.present, o.time)
     const learnt = this.#learner?.learnt ?? null
-    if (learnt === null) return
+    if (learnt === null) return false
     m.known = learnt
-    m.behind = 'from' in this.#options.reference && m.generation === 1 ? m.seen : this.#settle
+    m.behind = 'from' in this.#options.reference && m.generation === 1 ? m.seen : settleOf(this.#options)
     m.runs = noRuns
     m.since = null
     this.#learner = null
@@ -197,6 +189,7 @@ export class DistanceWatch implements RegimeWatch {
         `The reference of ${reference.frames} frames and ${reference.n} signals is complete, and the window holds nothing of it.`,
       )
     }
+    return true
   }
 
   #compare(o: Observation): Comparison | null {
@@ -241,8 +234,19 @@ export class DistanceWatch implements RegimeWatch {
     if (ratio < 1 || waited < 0 || waited % this.#pace.confirm !== 0 || relearning) {
       return { shift: null, ended: null }
     }
-    const look = this.#confirm(comparison, known)
-    return look === null ? { shift: null, ended: null } : this.#shift(o, comparison, readings, known, look)
+    const confirmed = confirm({
+      ring: this.#ring,
+      window: { ...this.#options.window, effective: o.window.effective },
+      lag: this.#lag,
+      signals: comparison.signals,
+      known,
+      explicit: this.#explicit,
+      scale: this.#scale,
+      solver: this.#solver,
+    })
+    return confirmed === null
+      ? { shift: null, ended: null }
+      : this.#shift(o, comparison, readings, known, confirmed)
   }
 
   /** Ends the shift when the new reference fits, or the old regime is back. */
@@ -260,37 +264,12 @@ export class DistanceWatch implements RegimeWatch {
     return null
   }
 
-  /** The second look: with bounded frames, without still signals, and carried by the newest half too. */
-  #confirm(
-    comparison: Comparison,
-    known: Learnt,
-  ): {
-    readonly look: SecondLook
-    readonly modes: readonly ChangeMode[]
-    readonly reference: Reference
-  } | null {
-    const { span, decay } = this.#options.window
-    const reference =
-      this.#lag === null
-        ? known.reference
-        : referenceFrom(this.#ring, span, this.#lag, this.#solver, this.#scale, new Set(comparison.signals))
-            ?.reference
-    if (reference === undefined) return null
-    const look = lookAgain(this.#ring, span, decay, comparison.signals, reference, this.#scale, this.#solver)
-    if (look === null) return null
-    const again = strongest(weigh(look.measures, known.calibration, this.#explicit))
-    if (again === null || again.ratio < 1) return null
-    const modes = changeModes(look.matrix, look.base, this.#solver)
-    if (modes.length === 0 || newestHalf(look.rows, modes) < newestHalfWanted) return null
-    return { look, modes, reference }
-  }
-
   #shift(
     o: Observation,
     comparison: Comparison,
     readings: readonly Reading[],
     known: Learnt,
-    confirmed: { look: SecondLook; modes: readonly ChangeMode[]; reference: Reference },
+    confirmed: Confirmed,
   ): { readonly shift: Shift; readonly ended: number | null } {
     const m = this.#m
     const ended = m.state === 'shifted' ? m.shifts : null
@@ -330,42 +309,8 @@ export class DistanceWatch implements RegimeWatch {
     return { shift, ended }
   }
 
-  /** Frames that pass after the reference before the window is free of it. */
-  get #settle(): number {
-    return this.#lag === null ? this.#options.window.span : 0
-  }
-
   #newLearner(given: Reference | null = null): Learner {
-    const { limits, reference, seed, window } = this.#options
-    const { span } = window
-    const generation = this.#m.generation++
-    const lag = this.#lag
-    const laggedFrames =
-      lag === null ? 0 : this.#explicit === null ? Math.max(span + lag, 3 * span) : span + lag
-    // A window of an exponential memory scatters like as many equal frames as Kish's number says.
-    const equal = window.decay === null ? span : Math.round((1 + window.decay) / (1 - window.decay))
-    const turnover = window.decay === null ? 1 / span : -Math.log(window.decay)
-    const gathered =
-      'from' in reference
-        ? Math.min(4 * span, Math.max(reference.from.frames, 2 * span))
-        : 'frames' in reference
-          ? reference.frames
-          : laggedFrames
-    const plan: LearnerPlan = {
-      frames: given === null ? gathered : 0,
-      settle: given === null ? this.#settle : 0,
-      since: 'since' in reference ? reference.since : Number.NEGATIVE_INFINITY,
-      draws:
-        given !== null
-          ? { kind: 'normal', span: equal, frames: given.frames }
-          : lag !== null
-            ? { kind: 'lagged', span: Math.min(equal, laggedFrames), lag }
-            : { kind: 'fixed', span: equal },
-      tail: 'explicit' in limits ? null : windowTail(limits.framesPerFalsePage, turnover, separateWatchers),
-      scale: this.#scale,
-      seed: (seed ?? 1) + 7919 * generation,
-    }
-    return new Learner(plan, this.#solver, given)
+    return new Learner(learningPlan(this.#options, this.#m.generation++, given), this.#solver, given)
   }
 
   #move(o: Observation, to: State, why: string, shift: number | null = null): void {
@@ -380,26 +325,13 @@ export class DistanceWatch implements RegimeWatch {
     shift: Shift | null,
     ended: number | null,
   ): Verdict {
-    const top = strongest(readings)
-    const measures = comparison?.measures
     return {
+      ...shown(o, comparison?.measures ?? null, readings, this.#m.since),
       state: this.#m.state,
       learning: this.#progress(),
-      distance:
-        measures === undefined
-          ? null
-          : {
-              w2: measures.w2,
-              ceiling: measures.ceiling,
-              rotation: rotationShare(measures.w2, measures.ceiling),
-            },
-      evidence: top === null ? null : { ratio: top.ratio, statistic: top.statistic, since: this.#m.since },
-      statistics: Object.fromEntries(readings.map((r) => [r.statistic, r.ratio])),
-      sight: o.active.length > 0 && o.window.effective > 0 ? sightOf(o) : null,
       shift,
       ended,
       transitions: this.#transitions,
-      leaders: leadersOf(o),
     }
   }
 
@@ -408,20 +340,6 @@ export class DistanceWatch implements RegimeWatch {
     const { span } = this.#options.window
     return this.#m.known === null ? { have: Math.min(this.#m.seen, span), want: span } : null
   }
-}
-
-const percent = (ratio: number): string => `${Math.round(100 * Math.min(ratio, 1e4))} %`
-const sentence = (words: string): string => words.charAt(0).toUpperCase() + words.slice(1)
-
-/** 1 + √q: the smallest population eigenvalue, in units of the noise, that stands out (Baik, Ben Arous & Péché 2005). */
-const sightOf = (o: Observation): number => 1 + Math.sqrt(o.active.length / o.window.effective)
-
-function leadersOf(o: Observation): Carrier[] {
-  if (o.spectrum === null || o.spectrum.modes < 1) return []
-  const { vectors } = o.spectrum
-  return Array.from(o.active, (i, a) => ({ signal: o.names[i] ?? `#${i}`, share: vectors[a]! ** 2 }))
-    .sort((a, b) => b.share - a.share)
-    .slice(0, mostLeaders)
 }
 
 interface WatchSnapshot {

@@ -35,22 +35,27 @@ export interface Reading {
 /** Largest ratio shown: nothing infinite leaves the room. */
 const mostRatio = 1e6
 
-/** The statistics against their limits. An explicit limit takes the place of the learnt one. */
+/**
+ * The statistics against their limits, these `widening` times as far out. An explicit limit takes the place
+ * of the learnt one.
+ */
 export function weigh(
   m: Measures,
   learnt: Calibration | null,
   explicit: ExplicitLimits | null,
+  widening = 1,
 ): readonly Reading[] {
   const readings: Reading[] = []
-  const share = shareReading(m, learnt, explicit)
+  const share = shareReading(m, learnt, explicit, widening)
   if (share !== null) readings.push(share)
   const distances = { 'spectral-distance': m.w2, frobenius: m.ceiling, 'partner-distance': m.partners }
   for (const [name, value] of Object.entries(distances)) {
     const statistic = name as keyof typeof distances
-    const scale = learnt === null ? 1 : Math.sqrt(m.n / learnt.n)
+    const scale = widening * (learnt === null ? 1 : Math.sqrt(m.n / learnt.n))
     const own = learnt?.distances[statistic]
-    const limit = explicit === null ? (own?.limit ?? 0) * scale : explicit[statistic]
-    if (limit === undefined || (explicit === null && own === undefined)) continue
+    const given = explicit?.[statistic]
+    const limit = explicit === null ? (own?.limit ?? 0) * scale : (given ?? 0) * widening
+    if ((explicit !== null && given === undefined) || (explicit === null && own === undefined)) continue
     const rest = (own?.rest ?? 0) * scale
     const from = rest < limit ? rest : 0
     readings.push({ statistic, value, limit, ratio: ratioOf(value - from, limit - from) })
@@ -62,15 +67,19 @@ function shareReading(
   m: Measures,
   learnt: Calibration | null,
   explicit: ExplicitLimits | null,
+  widening: number,
 ): Reading | null {
   const statistic = 'leading-share'
   const value = Math.abs(m.share - m.shareBefore)
   if (explicit !== null) {
-    const limit = explicit[statistic]
-    return limit === undefined ? null : { statistic, value, limit, ratio: ratioOf(value, limit) }
+    const given = explicit[statistic]
+    if (given === undefined) return null
+    const limit = given * widening
+    return { statistic, value, limit, ratio: ratioOf(value, limit) }
   }
   if (learnt === null) return null
-  const { centre, reach } = learnt.share
+  const { centre } = learnt.share
+  const reach = learnt.share.reach * widening
   const moved = cubeRoot(m) - centre
   const edge = m.shareBefore * Math.max(0, centre + Math.sign(moved || 1) * reach) ** 3
   return { statistic, value, limit: Math.abs(edge - m.shareBefore), ratio: ratioOf(Math.abs(moved), reach) }

@@ -111,8 +111,8 @@ function known(look: SecondLook, mode: ChangeMode | undefined): number {
 /**
  * Who carries the change, to first order: vᵀ(C−C0)v = Σ c_i, c_i = v_i Σ_j (C−C0)_ij v_j.
  * Strength and amplitude: v is the leading mode (of the window when it grew, of the reference when it fell)
- * and shares are of its movement λ1 − λ1⁰. Otherwise v is the main mode of C − C0 itself and shares are of
- * its eigenvalue. The ten largest are named; `remainder` is 1 less their sum: the signals not named, and for
+ * and shares are of its movement λ1 − λ1⁰. Otherwise v is the main mode of C − C0 itself (for partners: of its
+ * part beside the leading mode) and shares are of its eigenvalue. The ten largest are named; `remainder` is 1 less their sum: the signals not named, and for
  * the leading mode also what first order does not explain.
  */
 export function carriersOf(

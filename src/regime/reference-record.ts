@@ -15,6 +15,8 @@ export interface ReferenceRecord {
   readonly scales: readonly number[]
   /** Loudest frame at full weight, in multiples of the median energy. */
   readonly spread: number
+  /** Unevenness of the frames' loudness; 1 when all are equally loud. */
+  readonly unevenness: number
 }
 
 /** The record of a reference, for writing as JSON. `names`: the roster, index by index. */
@@ -28,6 +30,7 @@ export function recordOf(reference: Reference, names: readonly string[]): Refere
     means: Array.from(indices, (i) => reference.means[i]!),
     scales: Array.from(indices, (i) => reference.scales[i]!),
     spread: Math.min(reference.spread, 1e12),
+    unevenness: reference.unevenness,
   }
 }
 
@@ -37,7 +40,8 @@ const isNumbers = (v: unknown, length: number): v is number[] =>
 
 /**
  * Checks parsed JSON as a reference record. Fails with `reference-unreadable`, saying which part is wrong.
- * `means` and `scales` may be left out (0 and 1: increments already in the reference's scale), `spread` too.
+ * `means` and `scales` may be left out (0 and 1: increments already in the reference's scale), `spread` (4)
+ * and `unevenness` (1.2) too.
  */
 export function readReference(json: unknown): Result<ReferenceRecord> {
   if (typeof json !== 'object' || json === null) return fault('It is not a JSON object.')
@@ -74,7 +78,10 @@ export function readReference(json: unknown): Result<ReferenceRecord> {
     return fault(`"scales" is not ${n} positive numbers.`)
   const spread = r.spread ?? 4
   if (typeof spread !== 'number' || !(spread >= 1)) return fault('"spread" is not a number of at least 1.')
-  return ok({ type: 'reference', names, frames, matrix, means, scales, spread })
+  const uneven = r.unevenness ?? 1.2
+  if (typeof uneven !== 'number' || !(uneven >= 1))
+    return fault('"unevenness" is not a number of at least 1.')
+  return ok({ type: 'reference', names, frames, matrix, means, scales, spread, unevenness: uneven })
 }
 
 /** The reference on the signals of it that the roster has; null when these are fewer than two. */
@@ -103,6 +110,7 @@ export function referenceOf(
     means,
     scales,
     spread: record.spread,
+    unevenness: record.unevenness,
     bounded: matrix.slice(),
   }
 }

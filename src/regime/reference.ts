@@ -3,10 +3,13 @@ import type { FrameRing } from '../window/frame-ring.ts'
 import { MomentEstimator } from '../window/moment-estimator.ts'
 import { activeOf } from '../window/window.ts'
 import type { Base } from './measures.ts'
-import { bounded, energiesOf, matrixOf, quantile, type Rows, range, type Scale } from './rows.ts'
+import { bounded, energiesOf, matrixOf, quantile, type Rows, range, type Scale, unevenness } from './rows.ts'
 
-/** How much louder than the quiet 99 % quantile a frame may be before the second look turns it down. */
-const spareLoudness = 1.5
+/**
+ * How much louder than nine tenths of the reference's frames a frame may be before the second look turns it
+ * down; the tenth beyond may hold whatever it likes without loosening the bound.
+ */
+const spareLoudness = 2.5
 const keptModes = 12
 
 /** The state that the present is compared with. Plain data: structured-clone-able. */
@@ -24,6 +27,8 @@ export interface Reference extends Base {
   readonly spread: number
   /** The matrix after the same bound on loudness. */
   readonly bounded: Float64Array
+  /** Unevenness of its frames' loudness after that. */
+  readonly unevenness: number
 }
 
 /** The frames of the ring, oldest first, standardised by the reference's means and scales. */
@@ -78,16 +83,19 @@ export function referenceFrom(
   const rows = standardised(ring, count, skip, indices, means, scales)
   const energies = energiesOf(rows)
   const median = quantile(energies, 0.5)
-  const spread = median > 0 ? spareLoudness * (quantile(energies, 0.99) / median) : Number.MAX_VALUE
+  const spread = median > 0 ? spareLoudness * (quantile(energies, 0.9) / median) : Number.MAX_VALUE
   const matrix = matrixOf(rows, range(count), 'correlation')
+  const base = solvedBase(matrix, n, solver)
+  const quiet = bounded(rows, spread)
   const reference: Reference = {
-    ...solvedBase(matrix, n, solver),
+    ...base,
     indices,
     frames: count,
     means,
     scales,
     spread,
-    bounded: matrixOf(bounded(rows, spread), range(count), scale),
+    bounded: matrixOf(quiet, range(count), scale),
+    unevenness: unevenness(quiet, base.leading),
   }
   return { reference, rows }
 }

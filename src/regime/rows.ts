@@ -53,18 +53,47 @@ export function quantile(values: Float64Array, q: number): number {
 }
 
 /**
- * The rows with no frame louder than `spread` times the median one: louder frames are scaled down to that.
- * A frame of energy e moves a matrix of T frames by e·n/T at most, so no single frame (nor a loud handful)
- * carries a departure in what comes out; a lasting change leaves energies as they are.
+ * The rows with no frame louder than `spread` times the median one. A frame r times as loud as that bound is
+ * turned down to 1/r of it, but not below the median: the further out, the less it says (the redescending
+ * estimators of Hampel 1974). A frame of energy e moves a matrix of T frames by e·n/T at most, so no single
+ * frame (nor a loud handful) carries a departure in what comes out.
  */
 export function bounded(rows: Rows, spread: number): Rows {
   const energies = energiesOf(rows)
-  const cap = spread * quantile(energies, 0.5)
+  const median = quantile(energies, 0.5)
+  const cap = spread * median
   const values = rows.values.slice()
   for (let row = 0; row < rows.count; row++) {
     if (!(energies[row]! > cap)) continue
-    const factor = Math.sqrt(cap / energies[row]!)
+    const factor = Math.sqrt(Math.max(median, (cap * cap) / energies[row]!) / energies[row]!)
     for (let k = row * rows.n; k < (row + 1) * rows.n; k++) values[k]! *= factor
   }
   return { ...rows, values }
+}
+
+/**
+ * By how much more a matrix of the rows scatters because their loudness off the mode `leading` swings: with
+ * energies e and weights w (1, or falling by `decay` from the last row back),
+ * [Σw²e²/(Σwe)²]/[Σw²/(Σw)²], Kish's effective numbers without and with the loudness (Kish 1965). Off the
+ * leading mode, because a stronger common mode is a finding and not unevenness.
+ */
+export function unevenness(rows: Rows, leading: Float64Array, decay: number | null = null): number {
+  let [sum, squares, weights, squaredWeights] = [0, 0, 0, 0]
+  let w = 1
+  for (let row = rows.count - 1; row >= 0; row--) {
+    let energy = 0
+    let along = 0
+    for (let a = 0; a < rows.n; a++) {
+      const z = rows.values[row * rows.n + a]!
+      energy += z * z
+      along += z * leading[a]!
+    }
+    const part = w * Math.max(0, energy - along * along)
+    sum += part
+    squares += part * part
+    weights += w
+    squaredWeights += w * w
+    w *= decay ?? 1
+  }
+  return sum > 0 ? (squares * weights * weights) / (sum * sum * squaredWeights) : 1
 }

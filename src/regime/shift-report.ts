@@ -1,6 +1,6 @@
 import type { SymmetricSolver } from '../spectrum/spectrum.ts'
 import type { FrameRing } from '../window/frame-ring.ts'
-import { type ChangeMode, changePoint } from './change-modes.ts'
+import { type ChangeMode, changeModes, changePoint } from './change-modes.ts'
 import type { Comparison } from './comparison.ts'
 import { type Calibration, type Reading, strongest } from './evidence.ts'
 import { carriersOf, kindOf, noiseFloor } from './kind.ts'
@@ -35,10 +35,11 @@ export interface ShiftFacts {
 
 /** Everything that is said about a confirmed change, and how many frames lie surely behind its start. */
 export function reportShift(f: ShiftFacts): { readonly shift: Shift; readonly framesSince: number } {
-  const { comparison, look, modes, observation: o, ring } = f
+  const { comparison, look, observation: o, ring } = f
   const { measures } = comparison
   const noise = noiseFloor(look, f.learnt, o.window.effective, f.reference.frames)
-  const kind = kindOf(look, f.readings, modes, noise, f.scale)
+  const kind = kindOf(look, f.readings, f.modes, noise, f.scale)
+  const modes = kind === 'partners' ? changeModes(look.matrix, look.base, f.solver, true) : f.modes
   const { carriers, remainder } = carriersOf(look, kind, modes, o.names)
   const count = Math.max(1, Math.min(f.reach, ring.length))
   const rows = bounded(

@@ -109,6 +109,23 @@ export class Bench {
     return verdict
   }
 
+  suspend(): unknown {
+    return {
+      frame: this.#frame,
+      window: this.window.snapshot(),
+      lagged: this.#lagged?.snapshot() ?? null,
+      watch: this.watch.snapshot(),
+    }
+  }
+
+  resume(snapshot: unknown): void {
+    const s = snapshot as { frame: number; window: unknown; lagged: unknown; watch: unknown }
+    this.#frame = s.frame
+    this.window.restore(s.window)
+    this.#lagged?.restore(s.lagged)
+    this.watch.restore(s.watch)
+  }
+
   observe(x: Float64Array, present: Uint8Array): Observation {
     this.window.push(x, present)
     this.#lagged?.push(x, present)

@@ -1,0 +1,37 @@
+import { type Reading, strongest } from './evidence.ts'
+import { type Measures, rotationShare } from './measures.ts'
+import type { Carrier, Observation, Verdict } from './regime.ts'
+
+const mostLeaders = 10
+
+/** What a verdict shows of a frame's figures. `since`: when the evidence left its rest. */
+export function shown(
+  o: Observation,
+  m: Measures | null,
+  readings: readonly Reading[],
+  since: number | null,
+): Pick<Verdict, 'distance' | 'evidence' | 'statistics' | 'sight' | 'leaders'> {
+  const top = strongest(readings)
+  return {
+    distance: m === null ? null : { w2: m.w2, ceiling: m.ceiling, rotation: rotationShare(m.w2, m.ceiling) },
+    evidence: top === null ? null : { ratio: top.ratio, statistic: top.statistic, since },
+    statistics: Object.fromEntries(readings.map((r) => [r.statistic, r.ratio])),
+    sight: o.active.length > 0 && o.window.effective > 0 ? sightOf(o) : null,
+    leaders: leadersOf(o),
+  }
+}
+
+/** 1 + √q: the smallest population eigenvalue, in units of the noise, that stands out (Baik, Ben Arous & Péché 2005). */
+export const sightOf = (o: Observation): number => 1 + Math.sqrt(o.active.length / o.window.effective)
+
+function leadersOf(o: Observation): Carrier[] {
+  if (o.spectrum === null || o.spectrum.modes < 1) return []
+  const { vectors } = o.spectrum
+  return Array.from(o.active, (i, a) => ({ signal: o.names[i] ?? `#${i}`, share: vectors[a]! ** 2 }))
+    .sort((a, b) => b.share - a.share)
+    .slice(0, mostLeaders)
+}
+
+export const percent = (ratio: number): string => `${Math.round(100 * Math.min(ratio, 1e4))} %`
+
+export const sentence = (words: string): string => words.charAt(0).toUpperCase() + words.slice(1)
