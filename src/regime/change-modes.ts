@@ -65,7 +65,7 @@ export function quadratic(matrix: Float64Array, v: Float64Array): number {
 }
 
 /** Energy of every row along every mode: rows.count numbers for each. */
-export function energiesAlong(rows: Rows, modes: readonly ChangeMode[]): Float64Array[] {
+function energiesAlong(rows: Rows, modes: readonly ChangeMode[]): Float64Array[] {
   return modes.map(({ vector }) => {
     const out = new Float64Array(rows.count)
     for (let row = 0; row < rows.count; row++) {

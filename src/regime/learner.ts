@@ -30,7 +30,7 @@ const mostDraws = 400
 const leastDraws = 100
 
 /** 400 draws, fewer where signals are so many that these would take more than a few seconds. */
-export function drawsFor(n: number, span: number): number {
+function drawsFor(n: number, span: number): number {
   const cost = (span * n * n) / 2 + 3 * n ** 3
   return Math.round(Math.min(mostDraws, Math.max(leastDraws, affordable / cost)))
 }

@@ -1,7 +1,7 @@
 import type { MomentEstimator } from './moment-estimator.ts'
 
 /** A signal must be present in this share of the window to take part in its matrix. */
-export const presenceWanted = 0.8
+const presenceWanted = 0.8
 
 /** Why a signal of the roster has no place in the window's matrix. */
 export interface Absence {
