@@ -52,6 +52,8 @@ export interface ExplainOptions extends SettledOptions {
   /** `ENSEMBLE`, `ENSEMBLE/SHIFT` or a whole alert id; null: what there is to explain. */
   readonly subject: string | null
   readonly quarantine: boolean
+  /** File to which the present reference of the ensemble `subject` is written; null for none. */
+  readonly reference: string | null
 }
 
 export interface DemoOptions extends SharedOptions {

@@ -1,7 +1,8 @@
-import { existsSync } from 'node:fs'
+import { existsSync, writeFileSync } from 'node:fs'
 import type { Alert } from '../alerts/alert.ts'
 import { TautlineError } from '../errors.ts'
 import type { QuarantinedRecord } from '../feeds/feed.ts'
+import type { ReferenceRecord } from '../regime/reference-record.ts'
 import type { Transition } from '../regime/regime.ts'
 import { openStore } from '../store/open-store.ts'
 import type { Store } from '../store/store.ts'
@@ -12,8 +13,13 @@ const listed = 50
 /** How many alerts are searched for a name. */
 const searched = 10_000
 
+export interface ExplainParts {
+  /** The reference that the checkpoint of an ensemble holds; null while it is being learnt. */
+  referenceOf(snapshot: unknown): ReferenceRecord | null
+}
+
 /** Shows from the store of the settings; the monitor may run meanwhile. Throws what the store throws. */
-export async function explain(options: ExplainOptions): Promise<ExitStatus> {
+export async function explain(options: ExplainOptions, parts: ExplainParts): Promise<ExitStatus> {
   const {
     store: { path },
   } = options.read.settings
@@ -21,6 +27,7 @@ export async function explain(options: ExplainOptions): Promise<ExitStatus> {
   const store = openStore(path)
   try {
     if (options.quarantine) showQuarantine(store, options)
+    else if (options.reference !== null) writeReference(store, options, options.reference, parts)
     else if (options.subject === null) showList(store, options)
     else showAlert(findAlert(store, options.subject), store, options)
     return 0
@@ -42,6 +49,20 @@ function findAlert(store: Store, subject: string): Alert {
     )
   if (found === null) throw new TautlineError('nothing-to-explain', `There is no alert or regime ${subject}.`)
   return found
+}
+
+function writeReference(
+  store: Store,
+  { subject, io }: ExplainOptions,
+  path: string,
+  parts: ExplainParts,
+): void {
+  const snapshot = store.loadCheckpoint()?.ensembles[subject ?? '']
+  const record = snapshot === undefined ? null : parts.referenceOf(snapshot)
+  if (record === null)
+    throw new TautlineError('nothing-to-explain', `The ensemble ${subject} has no reference yet.`)
+  writeFileSync(path, `${JSON.stringify(record)}\n`)
+  io.stderr.write(`The reference of ${subject}, ${record.names.length} signals, is in ${path}.\n`)
 }
 
 function showAlert(alert: Alert, store: Store, { io, json }: ExplainOptions): void {

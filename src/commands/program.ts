@@ -185,22 +185,30 @@ function addExplain(tree: Command, commands: Commands, session: Session): void {
     )
     .description('show one alert or regime in full: evidence, who carries it, spectra, certificate')
     .option('--quarantine', 'show the records that could not be read, newest first')
+    .option(
+      '--reference <FILE>',
+      'write the present reference of the ensemble, for `reference: { from: FILE }`',
+    )
     .addHelpText(
       'after',
       examples(
         'tautline explain --settings config/desk.yaml',
         'tautline explain desk/3 --settings config/desk.yaml',
         'tautline explain --quarantine --settings config/desk.yaml --json',
+        'tautline explain desk --reference quiet.json --settings config/desk.yaml',
       ),
     )
     .action(async (subject: string | undefined, flags, command: Command) => {
       const settled = session.settled(command.optsWithGlobals())
       if (subject !== undefined && flags.quarantine)
         throw new TautlineError('usage', 'Give an alert or --quarantine, not both.')
+      if (flags.reference !== undefined && (subject === undefined || subject.includes('/')))
+        throw new TautlineError('usage', '--reference goes with the name of an ensemble.')
       session.status = await commands.explain({
         ...settled,
         subject: subject ?? null,
         quarantine: flags.quarantine === true,
+        reference: flags.reference ?? null,
       })
     })
 }

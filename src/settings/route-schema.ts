@@ -46,7 +46,7 @@ export const routeSchema = z
     z.strictObject({
       kafka: kafkaConnectionSchema
         .extend({ topic: text.meta({ description: 'Topic to which alerts are written.' }) })
-        .meta({ description: 'A Kafka topic.' }),
+        .meta({ description: 'A Kafka topic; brokers, tls, sasl and client-id as under feeds.' }),
       ...routeShared,
     }),
     z.strictObject({

@@ -1,10 +1,11 @@
-import { mkdtempSync, rmSync, writeFileSync } from 'node:fs'
+import { mkdtempSync, readFileSync, rmSync, writeFileSync } from 'node:fs'
 import { tmpdir } from 'node:os'
 import { join } from 'node:path'
 import { afterAll, beforeAll, describe, expect, it } from 'vitest'
 import type { Alert } from '../../src/alerts/alert.ts'
 import { cautions, detailsOf, sentenceOf } from '../../src/alerts/wording.ts'
 import { explain } from '../../src/commands/explain.ts'
+import { type ReferenceRecord, readReference } from '../../src/regime/reference-record.ts'
 import type { Shift } from '../../src/regime/regime.ts'
 import { openStore } from '../../src/store/open-store.ts'
 import { runLine } from './surroundings.ts'
@@ -70,6 +71,12 @@ beforeAll(() => {
     shift: 2,
   }
   store.journal([{ time: start, kind: 'transition', ensemble: 'desk', body: transition }])
+  store.saveCheckpoint({
+    version: 1,
+    savedAt: start,
+    positions: {},
+    ensembles: { desk: 'full', plant: 'learning' },
+  })
   store.quarantine([
     {
       feed: 'ticks',
@@ -85,8 +92,25 @@ beforeAll(() => {
 })
 afterAll(() => rmSync(folder, { recursive: true }))
 
+const record: ReferenceRecord = {
+  type: 'reference',
+  names: ['A', 'B'],
+  frames: 99,
+  matrix: [
+    [1, 0.5],
+    [0.5, 1],
+  ],
+  means: [0, 0],
+  scales: [1, 1],
+  spread: 4,
+  unevenness: 1.5,
+}
+const referenceOf = (snapshot: unknown) => (snapshot === 'full' ? record : null)
+
 const run = (...args: string[]) =>
-  runLine(['explain', ...args, '--settings', settings], { commands: { explain } })
+  runLine(['explain', ...args, '--settings', settings], {
+    commands: { explain: (options) => explain(options, { referenceOf }) },
+  })
 
 describe('explain', () => {
   it('without a name lists what there is', async () => {
@@ -139,13 +163,26 @@ describe('explain', () => {
     expect(stderr).toContain('(nothing-to-explain)')
   })
 
+  it('--reference writes the reference that the checkpoint holds, in the form that settings read', async () => {
+    const path = join(folder, 'quiet.json')
+    expect((await run('desk', '--reference', path)).status).toBe(0)
+    expect(readReference(JSON.parse(readFileSync(path, 'utf8')))).toEqual({ ok: true, value: record })
+    for (const name of ['plant', 'nobody']) {
+      const ran = await run(name, '--reference', join(folder, 'none.json'))
+      expect([ran.status, ran.stderr.includes('(nothing-to-explain)')]).toEqual([1, true])
+    }
+    expect((await run('desk/3', '--reference', path)).stderr).toContain('(usage)')
+  })
+
   it('does not make a store where there is none', async () => {
     const path = join(folder, 'new.yaml')
     writeFileSync(
       path,
       'ensembles: { desk: { signals: [A, B], clock: { step: 5s }, window: { frames: 20 } } }\nstore: { path: none.db }\n',
     )
-    const ran = await runLine(['explain', '--settings', path], { commands: { explain } })
+    const ran = await runLine(['explain', '--settings', path], {
+      commands: { explain: (options) => explain(options, { referenceOf }) },
+    })
     expect(ran.status).toBe(1)
     expect(ran.stderr).toContain('(store-missing)')
   })

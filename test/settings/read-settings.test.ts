@@ -1,11 +1,18 @@
 import { mkdtempSync, rmSync, writeFileSync } from 'node:fs'
 import { tmpdir } from 'node:os'
 import { join, resolve } from 'node:path'
+import { fileURLToPath } from 'node:url'
 import fc from 'fast-check'
 import { afterAll, beforeAll, describe, expect, it } from 'vitest'
+import { deskSignals } from '../../demo-feeds/desk.ts'
+import { stationSignals } from '../../demo-feeds/station.ts'
+import { errorCatalogue } from '../../src/errors.ts'
+import { matchesGlob } from '../../src/frames/glob.ts'
+import { Sessions } from '../../src/frames/sessions.ts'
 import { limitNames } from '../../src/settings/ensemble-checks.ts'
 import { faultsOf } from '../../src/settings/faults.ts'
 import { parseSettings, readSettings } from '../../src/settings/read-settings.ts'
+import { parseDays } from '../../src/settings/scalars.ts'
 import { settingsSchema } from '../../src/settings/schema.ts'
 
 const sound = `ensembles:
@@ -353,9 +360,46 @@ describe('the walk over schema and value', () => {
   })
 })
 
-describe('names shared with the decision', () => {
-  it('the statistics that explicit limits may name are those of the error catalogue', async () => {
-    const { errorCatalogue } = await import('../../src/errors.ts')
+describe('what the settings let pass, the rooms behind them take', () => {
+  it('explicit limits name the statistics of the decision', () => {
     for (const name of limitNames) expect(errorCatalogue['limit-unknown'].remedy).toContain(name)
+  })
+
+  it('days of the week', () => {
+    const word = fc.constantFrom('mon', 'Tue', 'wed', 'sun', 'sat', 'fry', '', ' thu')
+    const part = fc.array(word, { minLength: 1, maxLength: 3 }).map((words) => words.join('-'))
+    const days = fc.array(part, { minLength: 1, maxLength: 3 }).map((parts) => parts.join(','))
+    fc.assert(
+      fc.property(days, (written) => {
+        const numbers = parseDays(written)
+        if (numbers === null) return
+        const sessions = new Sessions({
+          zone: 'UTC',
+          open: '09:00',
+          close: '10:00',
+          days: written,
+          holidays: [],
+        })
+        // 1 November 2026 is a Sunday.
+        for (let day = 0; day < 7; day++)
+          expect(sessions.at(Date.UTC(2026, 10, 1 + day, 9, 30)) >= 0).toBe(numbers.includes(day))
+      }),
+      { seed: 5, numRuns: 500 },
+    )
+  })
+
+  it('the pattern of the shipped plant matches exactly the transmitters of the demo feed', () => {
+    const read = readSettings(fileURLToPath(new URL('../../config/plant.yaml', import.meta.url)), {})
+    const signals = read.ok ? read.value.settings.ensembles.station!.signals : []
+    const { pattern, limit } = signals as { pattern: string; limit: number }
+    expect(stationSignals.filter((name) => matchesGlob(pattern, name))).toEqual(stationSignals)
+    expect(limit).toBe(stationSignals.length)
+    expect(deskSignals.filter((name) => matchesGlob(pattern, name))).toEqual([])
+  })
+
+  it('the shipped desk names exactly the instruments of the demo feed', () => {
+    const env = { HOOK_SECRET: 'a secret of more than 24 characters' }
+    const read = readSettings(fileURLToPath(new URL('../../config/desk.yaml', import.meta.url)), env)
+    expect(read.ok && read.value.settings.ensembles.desk!.signals).toEqual(deskSignals)
   })
 })
