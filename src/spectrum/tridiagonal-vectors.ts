@@ -1,6 +1,9 @@
 /** Eigenvalues closer than this, relative to the norm, form a cluster whose vectors are kept orthogonal. */
 const clusterWidth = 1e-3
-const mostSteps = 6
+const mostSteps = 5
+const mostStarts = 4
+/** A vector whose solve has grown by this over the norm has a residual of its inverse: the least accepted. */
+const leastGrowth = 1e10
 
 /**
  * Eigenvectors of a symmetric tridiagonal matrix by inverse iteration (Wilkinson 1965; Peters & Wilkinson
@@ -16,7 +19,8 @@ export class TridiagonalVectors {
 
   /**
    * `diagonal` has n entries, `coupling[i]` joins i − 1 and i (coupling[0] unused). Writes the vectors of
-   * `values[0 … k − 1]`, sorted, as rows of `stride` entries into `out`; each has unit norm.
+   * `values[0 … k − 1]`, largest first, as rows of `stride` entries into `out`; each has unit norm. False
+   * when one cannot be had.
    */
   compute(
     diagonal: Float64Array,
@@ -26,27 +30,42 @@ export class TridiagonalVectors {
     k: number,
     out: Float64Array,
     stride: number,
-  ): void {
+  ): boolean {
     this.#reserve(n)
-    let norm = 0
-    for (let i = 0; i < n; i++) {
-      const left = i > 0 ? Math.abs(coupling[i]!) : 0
-      const right = i < n - 1 ? Math.abs(coupling[i + 1]!) : 0
-      norm = Math.max(norm, Math.abs(diagonal[i]!) + left + right)
-    }
+    const norm = normOf(diagonal, coupling, n)
     let clusterStart = 0
     for (let j = 0; j < k; j++) {
-      if (j > 0 && Math.abs(values[j - 1]! - values[j]!) > clusterWidth * norm) clusterStart = j
-      const x = out.subarray(j * stride, j * stride + n)
-      for (let i = 0; i < n; i++) x[i] = startEntry(i, j)
+      if (j > 0 && values[j - 1]! - values[j]! > clusterWidth * norm) clusterStart = j
       this.#factorise(diagonal, coupling, n, values[j]!, norm)
-      this.#orthogonalise(out, stride, clusterStart, j, n)
-      for (let step = 0; step < mostSteps; step++) {
-        this.#solve(x, n)
-        const growth = this.#orthogonalise(out, stride, clusterStart, j, n)
-        if (step > 0 && growth > 0.01 / (Number.EPSILON * n * Math.max(norm, Number.MIN_VALUE))) break
+      let growth = 0
+      for (let start = 0; start < mostStarts && !(growth >= leastGrowth / norm); start++) {
+        growth = this.#iterate(out, stride, clusterStart, j, n, norm, start)
       }
+      if (!(growth >= leastGrowth / norm)) return false
     }
+    return true
+  }
+
+  /** Inverse iteration for vector j; gives the last growth of its norm in a solve. */
+  #iterate(
+    out: Float64Array,
+    stride: number,
+    clusterStart: number,
+    j: number,
+    n: number,
+    norm: number,
+    start: number,
+  ): number {
+    const x = out.subarray(j * stride, j * stride + n)
+    for (let i = 0; i < n; i++) x[i] = startEntry(i, j + start * n)
+    this.#orthogonalise(out, stride, clusterStart, j, n)
+    let growth = 0
+    for (let step = 0; step < mostSteps; step++) {
+      this.#solve(x, n)
+      growth = this.#orthogonalise(out, stride, clusterStart, j, n)
+      if (step > 0 && growth > 0.01 / (Number.EPSILON * n * norm)) break
+    }
+    return growth
   }
 
   /** Takes the earlier vectors of the cluster out of vector j and brings it to norm 1; gives its norm before. */
@@ -65,7 +84,7 @@ export class TridiagonalVectors {
       }
     }
     let square = 0
-    for (let i = 0; i < n; i++) square += out[x + i]! ** 2
+    for (let i = 0; i < n; i++) square += out[x + i]! * out[x + i]!
     const length = Math.sqrt(square)
     if (length === 0) return 0
     for (let i = 0; i < n; i++) out[x + i] = out[x + i]! / length
@@ -134,6 +153,17 @@ export class TridiagonalVectors {
     this.#factor = new Float64Array(n)
     this.#swapped = new Uint8Array(n)
   }
+}
+
+/** Largest absolute row sum; 1 for a zero matrix. */
+function normOf(diagonal: Float64Array, coupling: Float64Array, n: number): number {
+  let norm = 0
+  for (let i = 0; i < n; i++) {
+    const left = i > 0 ? Math.abs(coupling[i]!) : 0
+    const right = i < n - 1 ? Math.abs(coupling[i + 1]!) : 0
+    norm = Math.max(norm, Math.abs(diagonal[i]!) + left + right)
+  }
+  return norm > 0 ? norm : 1
 }
 
 /** A start without symmetry, another for each vector: fractional parts of multiples of the golden ratio. */
