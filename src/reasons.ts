@@ -23,6 +23,15 @@ export type DropReason = keyof typeof dropReasons
 /** Counts of drops by reason; absent means zero. */
 export type DropCounts = Partial<Record<DropReason, number>>
 
+/** The sum of two counts. */
+export function addDrops(a: DropCounts, b: DropCounts): DropCounts {
+  const sum: DropCounts = { ...a }
+  for (const [reason, count] of Object.entries(b) as [DropReason, number][]) {
+    sum[reason] = (sum[reason] ?? 0) + count
+  }
+  return sum
+}
+
 /** Findings about one signal (or, for `gap`, about the whole ensemble). */
 export const findingKinds = ['stuck', 'stale', 'clipped', 'gap', 'duplicate', 'out-of-order'] as const
 export type FindingKind = (typeof findingKinds)[number]
