@@ -1,13 +1,13 @@
 import { BulkFitter } from './bulk/fit-bulk.ts'
-import { Ensemble } from './ensemble.ts'
+import { Ensemble, type EnsembleSnapshot } from './ensemble.ts'
 import { failed, ok, type Result, TautlineError } from './errors.ts'
 import { FrameMaker, type FrameOptions } from './frames/frame-maker.ts'
 import { daysOfWeek } from './frames/sessions.ts'
-import { DistanceWatch } from './regime/distance-watch.ts'
-import type { ReferenceRecord } from './regime/reference-record.ts'
+import { DistanceWatch, referenceInSnapshot } from './regime/distance-watch.ts'
+import { type ReferenceRecord, recordOf } from './regime/reference-record.ts'
 import { type Limits, type ReferenceChoice, readExplicitLimits } from './regime/watch-options.ts'
 import type { EnsembleSettings } from './settings/schema.ts'
-import { SimdSolver } from './spectrum/simd-solver.ts'
+import { fastestSolver } from './spectrum/fastest-solver.ts'
 import { BoxcarWindow } from './window/boxcar-window.ts'
 import { ExponentialWindow } from './window/exponential-window.ts'
 import { LaggedWindow } from './window/lagged-window.ts'
@@ -31,7 +31,7 @@ export function composeEnsemble(
 ): Result<Ensemble> {
   const limits = limitsOf(settings)
   if (!limits.ok) return limits
-  const solver = new SimdSolver()
+  const solver = fastestSolver()
   const makeWindow = (): Window =>
     'frames' in settings.window
       ? new BoxcarWindow(settings.window.frames)
@@ -69,6 +69,13 @@ export function composeEnsemble(
       scale: settings.scale,
     }),
   )
+}
+
+/** The reference that the snapshot of an ensemble holds, for keeping as a file; null while it is learnt. */
+export function referenceInState(snapshot: unknown): ReferenceRecord | null {
+  const { watch, names } = snapshot as EnsembleSnapshot
+  const reference = referenceInSnapshot(watch)
+  return reference === null ? null : recordOf(reference, names)
 }
 
 function frameOptions(settings: EnsembleSettings, files: EnsembleFiles, span: number): FrameOptions {

@@ -3,8 +3,9 @@ import type { BulkFitter } from './bulk/fit-bulk.ts'
 import type { FeedEvent } from './feeds/feed.ts'
 import type { Frame } from './frames/frame.ts'
 import type { FrameMaker, Made } from './frames/frame-maker.ts'
+import type { SignalCondition } from './frames/hygiene.ts'
 import type { Observation, RegimeWatch, Verdict } from './regime/regime.ts'
-import { leadingShare } from './spectrum/measures.ts'
+import { leadingShare } from './spectrum/shares.ts'
 import type { SymmetricSolver } from './spectrum/spectrum.ts'
 import type { LaggedWindow } from './window/lagged-window.ts'
 import type { TwinWindow } from './window/twin-window.ts'
@@ -120,6 +121,11 @@ export class Ensemble {
     }
   }
 
+  /** How many signals are well, and how many have which finding; each counts once. */
+  get conditions(): Readonly<Record<SignalCondition, number>> {
+    return this.#parts.maker.conditions
+  }
+
   /** A warning about the clock's step, or null. */
   get stepWarning(): string | null {
     return this.#parts.maker.stepWarning
@@ -221,6 +227,7 @@ export class Ensemble {
   snapshot(): unknown {
     const { maker, window, lagged, watch } = this.#parts
     return {
+      names: [...maker.names],
       maker: maker.snapshot(),
       window: window.snapshot(),
       lagged: lagged?.snapshot() ?? null,
@@ -242,7 +249,8 @@ export class Ensemble {
   }
 }
 
-interface EnsembleSnapshot {
+export interface EnsembleSnapshot {
+  readonly names: readonly string[]
   readonly maker: unknown
   readonly window: unknown
   readonly lagged: unknown

@@ -54,6 +54,30 @@ export const errorCatalogue = {
     sentence: 'The page would be open to everyone.',
     remedy: 'Give page.token, as "${PAGE_TOKEN}", or listen on 127.0.0.1.',
   },
+  // feeds
+  'feed-file': {
+    sentence: 'The readings of a feed cannot be opened or read.',
+    remedy: 'Make sure that the file exists, is no folder, and may be read by the user of the monitor.',
+  },
+  'feed-columns': {
+    sentence: 'The header line of a CSV file does not fit the format that the settings state.',
+    remedy:
+      'Name the columns in the settings as the first line of the file does; columns are separated by commas, and no name stands twice.',
+  },
+  'feed-encoding': {
+    sentence: 'The text of a feed is not UTF-8.',
+    remedy: 'Convert it, for example with `iconv -f UTF-16 -t UTF-8`.',
+  },
+  'kafka-certificate': {
+    sentence: 'A file for the encrypted connection to Kafka cannot be used.',
+    remedy:
+      'Let tls.ca, tls.cert and tls.key name PEM files that the user of the monitor may read; cert and key go together.',
+  },
+  'kafka-login': {
+    sentence: 'The Kafka brokers refuse the login.',
+    remedy:
+      'Check sasl.mechanism, sasl.username and the password, and that the user may read the topic and use the group.',
+  },
   // store
   'store-unopened': {
     sentence: 'The store cannot be opened.',
@@ -104,6 +128,16 @@ export const errorCatalogue = {
   'limit-unknown': {
     sentence: 'An explicit limit names a statistic that does not exist.',
     remedy: 'Use leading-share, spectral-distance, frobenius or partner-distance.',
+  },
+  // commands
+  'signals-unreadable': {
+    sentence: 'A file that the settings name for an ensemble cannot be used.',
+    remedy:
+      'Give a readable file: for `signals`, one name a line; for `reference`, as `explain --reference` writes it.',
+  },
+  'report-unwritten': {
+    sentence: 'The report cannot be written.',
+    remedy: 'Give --report a path in a folder that exists and may be written to.',
   },
   // command line
   'nothing-to-explain': {

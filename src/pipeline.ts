@@ -1,4 +1,4 @@
-import { concatMap, endWith, map, merge, type Observable, takeWhile } from 'rxjs'
+import { concatMap, endWith, map, merge, type Observable, of, takeUntil, takeWhile } from 'rxjs'
 import type { Ensemble, Judged } from './ensemble.ts'
 import type { Feed, FeedEvent, QuarantinedRecord, ReadingBatch } from './feeds/feed.ts'
 import type { Finding, Frame } from './frames/frame.ts'
@@ -49,23 +49,31 @@ export interface Pipeline {
   readonly drive: Drive
   /** Longest stretch of computing between two breaths of the event loop, in milliseconds. */
   readonly sliceMs: number
+  /** Emits when no more is to be taken in; what is in hand is carried to its end. */
+  readonly stop: Observable<unknown>
   /** Raises alerts and makes the outcome's effects durable; resolves when that is done. */
   effects(outcome: Outcome): void | Promise<void>
 }
 
 /**
  * The way through the house: readings ▶ frames ▶ window ▶ spectrum ▶ bulk ▶ regime ▶ alerts. Each source
- * has one batch in flight; it is acknowledged behind the last effect, and only then the feed reads on.
+ * has one batch in flight; it is acknowledged behind the last effect, and only then the feed reads on. One
+ * arrival is under way at a time: behind its effects the state of the house is that of all arrivals so far.
  */
 export function pipeline(parts: Pipeline): Observable<Outcome> {
   const { feeds, drive } = parts
   const arrivals = feeds.map((feed) => feed.events.pipe(map((event): Arrival => ({ feed, event }))))
   const beats = drive.beats.pipe(map((): Arrival => ({ feed: null, event: { type: 'beat' } })))
   return whileFeedsLast(merge(...arrivals), beats).pipe(
-    map((arrival) => intoFrames(parts, arrival)),
-    concatMap((framed) => intoVerdicts(parts, framed)),
-    concatMap((outcome) => intoEffects(parts, outcome)),
-    map(acknowledge),
+    takeUntil(parts.stop),
+    concatMap((arrival) =>
+      of(arrival).pipe(
+        map((arrival) => intoFrames(parts, arrival)),
+        concatMap((framed) => intoVerdicts(parts, framed)),
+        concatMap((outcome) => intoEffects(parts, outcome)),
+        map(acknowledge),
+      ),
+    ),
   )
 }
 

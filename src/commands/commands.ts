@@ -62,6 +62,10 @@ export interface DemoOptions extends SharedOptions {
   readonly port: number
   /** Whether to open the page in a browser. */
   readonly open: boolean
+  /** Settings whose routes, heartbeat, store and page are used; null where none were given. */
+  readonly given: ReadSettings | null
+  /** With `json`, every so many frames one `frame` record. */
+  readonly every: number
 }
 
 /** What stands behind the command line. A rejection with a `TautlineError` is printed for the user. */

@@ -1,6 +1,5 @@
-import { existsSync, readFileSync } from 'node:fs'
-import { dirname, join } from 'node:path'
 import type { Commands } from './commands.ts'
+import { packageVersion } from './package-version.ts'
 import { program } from './program.ts'
 
 /** Runs the command line of this process over the commands and sets its exit status. */
@@ -13,11 +12,4 @@ export async function main(commands: Commands): Promise<void> {
   const { stdout, stderr, env } = process
   const line = program(commands, packageVersion(), { stdout, stderr, env, now: Date.now })
   process.exitCode = await line.run(process.argv.slice(2))
-}
-
-/** The version of the package that this file belongs to, built or not. */
-function packageVersion(): string {
-  let folder = import.meta.dirname
-  while (!existsSync(join(folder, 'package.json'))) folder = dirname(folder)
-  return JSON.parse(readFileSync(join(folder, 'package.json'), 'utf8')).version
 }

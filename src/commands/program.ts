@@ -216,14 +216,21 @@ function addExplain(tree: Command, commands: Commands, session: Session): void {
 function addDemo(tree: Command, commands: Commands, session: Session): void {
   tree
     .command('demo')
-    .description('an invented desk and an invented pumping station, with the page; needs no settings')
+    .description(
+      'an invented desk and an invented pumping station, with the page; --settings gives it routes',
+    )
     .option('--speed <X>', 'event time over real time', number(1, 10_000), 300)
     .option('--port <N>', 'port of the page on 127.0.0.1', wholeNumber(0, 65_535), 8450)
     .option('--open', 'open the page in a browser')
+    .addOption(everyOption())
     .addHelpText('after', examples('tautline demo --open', 'tautline demo --speed 60 --port 9000'))
     .action(async (flags, command: Command) => {
+      const given = command.getOptionValueSourceWithGlobals('settings') === 'cli'
+      const flagsOfAll = command.optsWithGlobals()
       session.status = await commands.demo({
-        ...session.options(command.optsWithGlobals()),
+        ...session.options(flagsOfAll),
+        given: given ? session.settled(flagsOfAll).read : null,
+        every: flags.every,
         speed: flags.speed,
         port: flags.port,
         open: flags.open === true,

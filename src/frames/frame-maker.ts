@@ -12,7 +12,7 @@ import {
 } from './aligner.ts'
 import { EppsCheck, type EppsSnapshot } from './epps.ts'
 import type { Finding, Frame } from './frame.ts'
-import { Hygiene, type HygieneSnapshot } from './hygiene.ts'
+import { Hygiene, type HygieneSnapshot, type SignalCondition } from './hygiene.ts'
 import { type Increment, type IncrementSnapshot, IncrementTaker } from './increments.ts'
 import { Memory, type MemoryChoice, type MemorySnapshot } from './memory.ts'
 import { overLimit, Roster, type RosterSnapshot, type SignalChoice, unwatched } from './roster.ts'
@@ -123,6 +123,10 @@ export class FrameMaker {
   /** T_eff/T: what the signals' own memory leaves of a window. */
   get effectiveShare(): number {
     return this.#memory.effectiveShare
+  }
+
+  get conditions(): Readonly<Record<SignalCondition, number>> {
+    return this.#hygiene.conditions(this.#roster.places)
   }
 
   /** Steps that wait for the watermark. */

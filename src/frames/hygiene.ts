@@ -2,6 +2,10 @@ import { type FindingKind, findingKinds } from '../reasons.ts'
 import type { Levels } from './aligner.ts'
 import type { Finding } from './frame.ts'
 
+/** The condition of a signal: the worst of what is found about it. */
+export const signalConditions = ['well', 'missing', 'stuck', 'stale', 'clipped'] as const
+export type SignalCondition = (typeof signalConditions)[number]
+
 export interface HygieneOptions {
   /** Milliseconds without movement after which a signal is stuck; null: learnt from its own history. */
   readonly stuckAfter: number | null
@@ -133,6 +137,20 @@ export class Hygiene {
   /** The ensemble as a whole was silent from one time to another. */
   gap(from: number, to: number): void {
     this.#news.push({ signal: null, finding: 'gap', from, to, detail: 'no signal had a value' })
+  }
+
+  /** How many of the first `places` signals are in which condition; `missing`: never seen. */
+  conditions(places: number): Record<SignalCondition, number> {
+    const counts: Record<SignalCondition, number> = { well: 0, missing: 0, stuck: 0, stale: 0, clipped: 0 }
+    for (let place = 0; place < places; place++) {
+      const has = (finding: FindingKind): boolean => this.#open.has(keyOf(finding, place))
+      if (has('stuck')) counts.stuck++
+      else if (!(this.#signals[place]?.seen ?? false)) counts.missing++
+      else if (has('stale')) counts.stale++
+      else if (has('clipped')) counts.clipped++
+      else counts.well++
+    }
+    return counts
   }
 
   /** Findings that began or ended since the last call. */

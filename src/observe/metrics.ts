@@ -1,14 +1,12 @@
 import { Counter, Gauge, Histogram, Registry } from 'prom-client'
 import type { Judged, Step } from '../ensemble.ts'
+import { type SignalCondition, signalConditions } from '../frames/hygiene.ts'
 import { type DropCounts, type DropReason, dropReasons } from '../reasons.ts'
 import { shiftKinds, states } from '../regime/regime.ts'
 
 const prefix = 'tautline_'
 /** Signals of an ensemble that the table of carriers names at most. */
 const mostCarriers = 10
-
-export type SignalCondition = 'well' | 'missing' | 'stuck' | 'stale' | 'clipped'
-export const signalConditions: readonly SignalCondition[] = ['well', 'missing', 'stuck', 'stale', 'clipped']
 
 /**
  * The monitor's own metrics in a registry of their own, base units throughout. No label takes a signal's

@@ -348,3 +348,7 @@ interface WatchSnapshot {
   readonly times: Float64Array
   readonly learner: LearnerSnapshot | null
 }
+
+/** The reference that a snapshot holds; null while the first is learnt. */
+export const referenceInSnapshot = (snapshot: unknown): Reference | null =>
+  (snapshot as WatchSnapshot).memory.known?.reference ?? null
