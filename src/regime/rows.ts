@@ -1,4 +1,5 @@
 import { MomentEstimator } from '../window/moment-estimator.ts'
+import { addFourOuter, addOuter, triangleSize } from '../window/triangle.ts'
 
 /** Standardised frames of n signals, row by row; a missing entry is 0 with `present` 0. */
 export interface Rows {
@@ -16,6 +17,9 @@ export type Scale = 'correlation' | 'covariance'
  */
 export function matrixOf(rows: Rows, order: Iterable<number>, scale: Scale, decay: number | null = null) {
   const n = rows.n
+  if (decay === null && scale === 'correlation' && rows.present.every((here) => here === 1)) {
+    return completeCorrelation(rows, order)
+  }
   const moments = new MomentEstimator(decay)
   for (const row of order) {
     moments.push(rows.values.subarray(row * n, row * n + n), rows.present.subarray(row * n, row * n + n))
@@ -24,6 +28,40 @@ export function matrixOf(rows: Rows, order: Iterable<number>, scale: Scale, deca
   const every = Int32Array.from({ length: n }, (_, i) => i)
   if (scale === 'correlation') moments.correlation(out, every)
   else moments.covariance(out, every, new Float64Array(n).fill(1))
+  return out
+}
+
+/** Pearson correlation of standardised rows without a gap: the same figures, four rows a pass. */
+function completeCorrelation({ n, values }: Rows, order: Iterable<number>): Float64Array {
+  const second = new Float64Array(triangleSize(n))
+  const sum = new Float64Array(n)
+  const four: number[] = []
+  let count = 0
+  for (const row of order) {
+    count++
+    const at = row * n
+    for (let i = 0; i < n; i++) sum[i] = sum[i]! + values[at + i]!
+    four.push(at)
+    if (four.length < 4) continue
+    addFourOuter(second, values, four, n)
+    four.length = 0
+  }
+  for (const at of four) addOuter(second, values.subarray(at, at + n), n, 1)
+  const factors = new Float64Array(n)
+  for (let i = 0; i < n; i++) {
+    const own = second[triangleSize(i) + i]!
+    const centred = own - (sum[i]! * sum[i]!) / count
+    factors[i] = centred > 1e-12 * own ? 1 / Math.sqrt(centred) : 0
+  }
+  const out = new Float64Array(n * n)
+  for (let i = 0, k = 0; i < n; i++) {
+    for (let j = 0; j <= i; j++, k++) {
+      const r = (second[k]! - (sum[i]! * sum[j]!) / count) * factors[i]! * factors[j]!
+      const bounded = i === j ? 1 : Math.min(1, Math.max(-1, r))
+      out[i * n + j] = bounded
+      out[j * n + i] = bounded
+    }
+  }
   return out
 }
 

@@ -249,9 +249,29 @@ export class MomentEstimator implements Estimator {
       means[a] = count > 0 ? this.#sum[i]! / count : 0
       factors[a] = count > 0 && scales[i]! > 0 ? 1 / (scales[i]! * Math.sqrt(count)) : 0
     }
+    if (this.#gaps === null) {
+      this.#fillWithoutGaps(out, active, means, factors)
+      return
+    }
     for (let a = 0; a < n; a++) {
       for (let b = 0; b <= a; b++) {
         const m = this.#shifted(active[a]!, active[b]!, means[a]!, means[b]!) * factors[a]! * factors[b]!
+        out[a * n + b] = m
+        out[b * n + a] = m
+      }
+    }
+  }
+
+  #fillWithoutGaps(out: Float64Array, active: Int32Array, means: Float64Array, factors: Float64Array): void {
+    const n = active.length
+    const second = this.#second
+    for (let a = 0; a < n; a++) {
+      const i = active[a]!
+      const row = triangleSize(i)
+      const sum = this.#sum[i]!
+      const factor = factors[a]!
+      for (let b = 0; b <= a; b++) {
+        const m = (second[row + active[b]!]! - sum * means[b]!) * factor * factors[b]!
         out[a * n + b] = m
         out[b * n + a] = m
       }
