@@ -2,6 +2,9 @@ import { type ErrorCode, errorCatalogue, TautlineError } from '../errors.ts'
 import { problemLines, type SettingsProblem } from '../settings/problem.ts'
 import { type SharedOptions, writeRecord } from './commands.ts'
 
+/** Most problems of one file that are printed; the first ones are the likeliest causes. */
+const mostPrinted = 50
+
 /** What is wrong with the settings file, as one error of the command. */
 export class SettingsWrong extends TautlineError {
   readonly problems: readonly SettingsProblem[]
@@ -27,7 +30,8 @@ export function printError(error: unknown, options: SharedOptions, redact: (text
   const { sentence } = errorCatalogue[known.code]
   const problems = known instanceof SettingsWrong ? known.problems : []
   const lines = [
-    ...problems.flatMap(problemLines),
+    ...problems.slice(0, mostPrinted).flatMap(problemLines),
+    ...(problems.length > mostPrinted ? [`… and ${problems.length - mostPrinted} more`] : []),
     `tautline: ${sentence} (${known.code})`,
     ...(known.detail === '' ? [] : [`  ${known.detail}`]),
     `  ${known.remedy}`,

@@ -13,6 +13,8 @@ import { type Environment, substitute } from './substitution.ts'
 
 /** Most values that a file may hold, aliases written out. */
 const mostNodes = 200_000
+/** Deepest nesting; the parser's time and stack grow without bound with it. */
+const deepest = 100
 /** How a value is shown that is not there. */
 const nothing = 'nothing'
 
@@ -43,7 +45,8 @@ export class SettingsDocument {
   constructor(file: string, source: string, env: Environment) {
     this.file = file
     this.#lines = new LineCounter()
-    const documents = parseAllDocuments(source, {
+    const tooDeep = firstTooDeep(source)
+    const documents = parseAllDocuments(tooDeep === null ? source : '', {
       version: '1.2',
       schema: 'core',
       merge: false,
@@ -53,6 +56,8 @@ export class SettingsDocument {
     })
     const reader = new Reader(env)
     const [document] = documents
+    if (tooDeep !== null)
+      reader.fault('syntax', [], tooDeep, `The YAML is nested deeper than ${deepest} levels.`)
     if (documents.length > 1)
       reader.fault('syntax', [], documents[1]!.range[0], 'The file holds more than one YAML document.')
     const errors = document ? [...document.errors, ...document.warnings] : []
@@ -208,6 +213,16 @@ class Reader {
 function cut(text: string): string {
   const bare = text.replace(/:\/\/[^@/\s]*@/, '://[hidden]@')
   return bare.length > 80 ? `${bare.slice(0, 79)}…` : bare
+}
+
+/** Offset at which brackets, or markers on one line, are nested too deeply; counted without regard to quotes. */
+function firstTooDeep(source: string): number | null {
+  let depth = 0
+  for (const { 0: mark, index } of source.matchAll(/[[\]{}]/g)) {
+    depth = mark === '[' || mark === '{' ? depth + 1 : Math.max(0, depth - 1)
+    if (depth > deepest) return index
+  }
+  return new RegExp(`^(?:[ \\t]*[-?:](?=[ \\t])){${deepest}}`, 'm').exec(source)?.index ?? null
 }
 
 /** The parser's message without its quotation of the source, which may hold a secret. */

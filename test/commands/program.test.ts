@@ -201,6 +201,15 @@ describe('settings that cannot be used', () => {
     })
   })
 
+  it('beyond fifty are counted, not printed', async () => {
+    const wrong = join(folder, 'many.yaml')
+    writeFileSync(wrong, Array.from({ length: 70 }, (_, i) => `k${i}: 1\n`).join(''))
+    const { stderr } = await runLine(['watch', '--settings', wrong])
+    expect(stderr.match(/many\.yaml:\d+:\d+:/g)).toHaveLength(50)
+    expect(stderr).toContain('… and 21 more')
+    expect(stderr).toContain('71 errors in')
+  })
+
   it('a settings file that is not there is `settings-missing`', async () => {
     const ran = await runLine(['check', '--settings', join(folder, 'none.yaml')])
     expect(ran.status).toBe(2)

@@ -169,6 +169,15 @@ page: { token: "\${NOT_SET}", listen: "0.0.0.0:1" }
     expect(problems.some(({ sentence }) => sentence.includes('more than 200000 values'))).toBe(true)
   })
 
+  it.each([
+    ['brackets', '['.repeat(500_000)],
+    ['maps', '{a: '.repeat(100_000)],
+    ['list marks', '- '.repeat(200_000)],
+    ['indentation', Array.from({ length: 1300 }, (_, i) => `${' '.repeat(i)}k:`).join('\n')],
+  ])('%s nested without end are one error, at once', (_, text) => {
+    expect(problemsOf(text).map(({ code }) => code)).toEqual(['settings-syntax'])
+  })
+
   it('a key that JavaScript knows is a key like any other', () => {
     expect(
       problemsOf(`${sound}__proto__: { page: 1 }\nconstructor: 2\n`).map(({ key, code }) => `${code} ${key}`),
