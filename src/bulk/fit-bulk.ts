@@ -1,107 +1,103 @@
 import type { Spectrum } from '../spectrum/spectrum.ts'
-import type { Bulk, BulkModel, Escape } from './bulk.ts'
-import { exponentialEdges, exponentialLaw } from './exponential-memory.ts'
-import { noiseLimit } from './johnstone.ts'
-import { kolmogorovSmirnov, LawTable } from './law-table.ts'
-import { type Edges, marchenkoPasturEdges, marchenkoPasturLaw } from './marchenko-pastur.ts'
+import type { Bulk } from './bulk.ts'
+import { kolmogorovSmirnov, kolmogorovSmirnovOfTwo } from './kolmogorov.ts'
+import { boxcarNoise, exponentialNoise, type NoiseModel } from './noise-model.ts'
+import { noiseVariance } from './noise-variance.ts'
+import { participationRatio } from './participation.ts'
+import type { ResampledLimit } from './resampled-edge.ts'
+import { tracyWidomUpper } from './tracy-widom.ts'
 
 export interface BulkOptions {
-  /** Chance that the largest noise eigenvalue counts as an escape. */
+  /** Chance that the largest noise eigenvalue counts as an escape, between 0 and 1. */
   readonly level: number
   /** a of an exponential memory; null for a boxcar. */
   readonly decay: number | null
+  /** Scale of the matrix. Left out: covariance, whose limit is the higher of the two. */
+  readonly scale?: 'correlation' | 'covariance'
 }
 
-/** A limit from resampled frames, in units of the noise variance, that takes the place of the law's. */
-export interface ResampledLimit {
-  readonly upper: number
-  readonly limit: number
-}
-
-/** Beyond this Kolmogorov–Smirnov distance the law does not describe the bulk. */
-export const fitWanted = 0.2
+/** Eigenvalues below this part of the largest are zeros that rounding has moved. */
+const rounding = 1e-10
 
 /**
  * Fits the noise bulk by sequential deflation (Kritchman & Nadler 2009): as long as the largest eigenvalue
- * left exceeds the Tracy–Widom limit for the p eigenvalues left, noise variance their mean, it is an escape.
- * At most half of the spectrum may escape.
+ * left exceeds the Tracy–Widom limit for the p eigenvalues left and the noise variance beside the escapes, it
+ * is an escape. The trace need not be N.
+ *
+ * A correlation matrix has the limit of correlations for the first test alone: a common mode unties the
+ * variances of the noise beside it, and then the limit of covariances holds, on the safe side.
  */
 export class BulkFitter {
   readonly #options: BulkOptions
-  #tables = new Map<string, LawTable>()
+  readonly #noise: NoiseModel
+  readonly #quantile: number
 
+  /** @throws RangeError when the level is not between 0 and 1 */
   constructor(options: BulkOptions) {
     this.#options = options
+    this.#noise = options.decay === null ? boxcarNoise : exponentialNoise
+    this.#quantile = tracyWidomUpper(options.level)
   }
 
   /**
-   * `effective`: number of independent frames that the window is worth. The spectrum should hold the vectors
-   * of what escapes; the participation of an escape whose vector it lacks is given as n.
+   * `effective`: number of independent frames that the window is worth, positive. With `resampled`, its limit
+   * and edges take the place of the law's. The spectrum should hold the vectors of all escapes: ask the solver
+   * for `escapes.length` modes and fit again where it does not.
    */
   fit(spectrum: Spectrum, effective: number, resampled: ResampledLimit | null = null): Bulk {
     const { values, n } = spectrum
-    let rest = 0
-    for (const value of values) rest += value
+    let trace = 0
+    for (let k = 0; k < n; k++) trace += values[k]!
+    const zero = rounding * Math.abs(values[0] ?? 0)
     let escaped = 0
-    let noise = this.#noise(n, effective, resampled)
-    let variance = rest / n
-    while (escaped < n >> 1 && values[escaped]! > variance * noise.limit) {
-      rest = Math.max(0, rest - values[escaped]!)
+    let law = this.#noise.law(Math.max(1, n), effective)
+    let variance = n > 0 ? Math.max(0, trace) / n : 0
+    let limit = variance * this.#limit(0, n, effective, resampled)
+    while (escaped < n - 1 && values[escaped]! > Math.max(limit, zero)) {
       escaped++
-      noise = this.#noise(n - escaped, effective, resampled)
-      variance = rest / (n - escaped)
+      law = this.#noise.law(n - escaped, effective)
+      variance = noiseVariance(values, escaped, trace, law)
+      limit = variance * this.#limit(escaped, n, effective, resampled)
     }
-    const q = (n - escaped) / effective
-    const law = this.#model
     const bulk = values.subarray(escaped)
+    const edges = resampled ?? law.edges
     return {
-      model: resampled === null ? law : 'resampled',
-      lower: variance * noise.edges.lower,
-      upper: variance * noise.edges.upper,
+      model: resampled === null ? this.#noise.model : 'resampled',
+      lower: variance * edges.lower,
+      upper: variance * edges.upper,
       level: this.#options.level,
-      limit: variance * noise.limit,
-      fit: kolmogorovSmirnov(bulk, this.#table(q), variance),
+      limit,
+      fit:
+        resampled === null
+          ? kolmogorovSmirnov(bulk, law, variance, zero)
+          : kolmogorovSmirnovOfTwo(bulk, resampled.spectrum, variance),
       variance,
-      q,
-      escapes: Array.from({ length: escaped }, (_, k) => escapeOf(spectrum, k)),
+      q: Math.max(1, n - escaped) / effective,
+      momentQ: momentQ(bulk),
+      escapes: Array.from({ length: escaped }, (_, k) => ({
+        value: values[k]!,
+        signals: k < spectrum.modes ? participationRatio(spectrum.vectors, k * n, n) : 0,
+      })),
     }
   }
 
-  get #model(): Exclude<BulkModel, 'resampled'> {
-    return this.#options.decay === null ? 'marchenko-pastur' : 'exponential'
-  }
-
-  /**
-   * Edges and limit for p noise eigenvalues of variance 1. For the exponential memory N(1 − a) is written as
-   * N(1 + a)/T_eff, T_eff Kish's (1 + a)/(1 − a), so that what shortens T_eff widens the bulk.
-   */
-  #noise(p: number, effective: number, resampled: ResampledLimit | null): { edges: Edges; limit: number } {
-    const { level, decay } = this.#options
-    const edges =
-      decay === null ? marchenkoPasturEdges(p / effective) : exponentialEdges((p * (1 + decay)) / effective)
-    if (resampled !== null) return { edges: { ...edges, upper: resampled.upper }, limit: resampled.limit }
-    return { edges, limit: noiseLimit(decay === null ? effective : framesOfEdge(p, edges.upper), p, level) }
-  }
-
-  #table(q: number): LawTable {
-    const key = q.toPrecision(4)
-    const known = this.#tables.get(key)
-    if (known !== undefined) return known
-    if (this.#tables.size >= 64) this.#tables.clear()
-    const { decay } = this.#options
-    const table = new LawTable(decay === null ? marchenkoPasturLaw(q) : exponentialLaw(q * (1 + decay)))
-    this.#tables.set(key, table)
-    return table
+  /** The limit beside `escaped` escapes, noise variance 1. */
+  #limit(escaped: number, n: number, effective: number, resampled: ResampledLimit | null): number {
+    if (resampled !== null) return resampled.limit
+    const ofCorrelation = escaped === 0 && this.#options.scale === 'correlation'
+    const p = Math.max(1, n - escaped)
+    const { centre, scale } = this.#noise[ofCorrelation ? 'correlation' : 'covariance'](p, effective)
+    return centre + this.#quantile * scale
   }
 }
 
-/** Frames of a boxcar whose upper edge lies where this one does: it lends the edge its fluctuation. */
-const framesOfEdge = (p: number, upper: number): number => p / (Math.sqrt(upper) - 1) ** 2
-
-function escapeOf(spectrum: Spectrum, k: number): Escape {
-  const { n, modes, vectors, values } = spectrum
-  if (k >= modes) return { value: values[k]!, signals: n }
-  let fourth = 0
-  for (let i = k * n; i < (k + 1) * n; i++) fourth += vectors[i]! ** 4
-  return { value: values[k]!, signals: 1 / fourth }
+/** m2/m1² − 1 of the bulk: q for Marchenko–Pastur, and N/T_eff for an exponential memory. */
+function momentQ(bulk: Float64Array): number {
+  let first = 0
+  let second = 0
+  for (const value of bulk) {
+    first += value
+    second += value * value
+  }
+  return first > 0 ? (second * bulk.length) / (first * first) - 1 : 0
 }

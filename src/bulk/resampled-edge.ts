@@ -1,69 +1,144 @@
 import type { SymmetricSolver } from '../spectrum/spectrum.ts'
-import type { ResampledLimit } from './fit-bulk.ts'
+import { tracyWidomUpper } from './tracy-widom.ts'
 
-/** The frames of a window: row t holds the n values of frame t, missing ones 0. */
-export interface FrameRows {
+/** The frames of a window, oldest first: `frames` rows of n values, row-major, missing ones 0. */
+export interface FrameTable {
   readonly n: number
   readonly frames: number
-  value(t: number, i: number): number
+  readonly values: Float64Array
 }
 
-const drawsWanted = 40
-const drawsKept = 200
+/** What the window's signals do by chance, from resampling; in units of the noise variance. */
+export interface ResampledLimit {
+  /** Medians of the smallest and of the largest eigenvalue. */
+  readonly lower: number
+  readonly upper: number
+  /** What the largest eigenvalue exceeds with probability `level`. */
+  readonly limit: number
+  /** Mean of the k-th largest eigenvalue, k = 1 … n. */
+  readonly spectrum: Float64Array
+}
+
+export interface ResampledEdgeOptions {
+  readonly level: number
+  readonly seed: number
+  /** a of an exponential memory; null for a boxcar. */
+  readonly decay: number | null
+}
+
+const fewestDraws = 20
+const mostDraws = 400
+/** Mean and standard deviation of the Tracy–Widom law, β = 1 (Bornemann 2010). */
+const lawMean = -1.206533574582
+const lawDeviation = Math.sqrt(1.607781034581)
 
 /**
- * The largest eigenvalue after each signal was shifted round by a random offset of its own: memory, tails and
- * gaps stay, what signals share is lost (circular shifts after Politis & Romano 1994). One draw a call; the
- * limit is the quantile of the kept draws at the level.
+ * The edge of the bulk from the data: each signal is shifted round by a random offset of its own, which keeps
+ * its memory and its tails and loses what it shares with the others (circular shifts after Politis & Romano
+ * 1994). One draw a call, so that a stream can spread them over its frames; the last 400 count. A change of n
+ * starts afresh.
  */
 export class ResampledEdge {
   readonly #solver: SymmetricSolver
-  readonly #level: number
-  #draws: number[] = []
+  readonly #options: ResampledEdgeOptions
+  #spectra: Float64Array[] = []
+  #next = 0
   #state: number
+  #columns = new Float64Array(0)
+  #matrix = new Float64Array(0)
 
-  constructor(solver: SymmetricSolver, level: number, seed: number) {
+  /** @throws RangeError when the level is not between 0 and 1 */
+  constructor(solver: SymmetricSolver, options: ResampledEdgeOptions) {
+    tracyWidomUpper(options.level)
     this.#solver = solver
-    this.#level = level
-    this.#state = seed >>> 0
+    this.#options = options
+    this.#state = options.seed >>> 0
   }
 
-  /** Takes one draw from the present window; gives the limit, or null while there are too few draws. */
-  draw(rows: FrameRows): ResampledLimit | null {
-    const { n, frames } = rows
-    const columns = new Float64Array(n * frames)
+  /** Takes one draw from the frames of the present window, at least two of them. */
+  draw(table: FrameTable): void {
+    const { n } = table
+    if (this.#spectra.length > 0 && this.#spectra[0]!.length !== n) {
+      this.#spectra = []
+      this.#next = 0
+    }
+    this.#shift(table)
+    this.#correlate(n, table.frames)
+    this.#spectra[this.#next] = this.#solver.solve(this.#matrix, n, 0).values
+    this.#next = (this.#next + 1) % mostDraws
+  }
+
+  get draws(): number {
+    return this.#spectra.length
+  }
+
+  /**
+   * The limit by the draws so far; null below 20. While (draws + 1)·level is at least 1, the order statistic
+   * that a further draw exceeds with probability at most `level`; for rarer levels the Tracy–Widom quantile
+   * with the mean and the deviation of the draws, and no less than the largest.
+   */
+  get limit(): ResampledLimit | null {
+    const draws = this.#spectra.length
+    if (draws < fewestDraws) return null
+    const n = this.#spectra[0]!.length
+    const spectrum = new Float64Array(n)
+    for (const values of this.#spectra) {
+      for (let k = 0; k < n; k++) spectrum[k] = spectrum[k]! + values[k]! / draws
+    }
+    const largest = Float64Array.from(this.#spectra, (values) => values[0]!).sort()
+    const smallest = Float64Array.from(this.#spectra, (values) => values[n - 1]!).sort()
+    return {
+      lower: Math.max(0, smallest[draws >> 1]!),
+      upper: largest[draws >> 1]!,
+      limit: limitOf(largest, this.#options.level),
+      spectrum,
+    }
+  }
+
+  /** Columns of the table, weighted, centred, brought to norm 1 and shifted round. */
+  #shift({ n, frames, values }: FrameTable): void {
+    if (this.#columns.length < n * frames) this.#columns = new Float64Array(n * frames)
+    const columns = this.#columns
+    const decay = this.#options.decay ?? 1
     for (let i = 0; i < n; i++) {
       const shift = this.#below(frames)
+      const start = i * frames
+      for (let t = 0; t < frames; t++) columns[start + ((t + shift) % frames)] = values[t * n + i]!
+      let weight = 1
+      let total = 0
       let sum = 0
-      for (let t = 0; t < frames; t++) sum += rows.value(t, i)
-      let square = 0
-      for (let t = 0; t < frames; t++) square += (rows.value(t, i) - sum / frames) ** 2
-      const scale = square > 0 ? 1 / Math.sqrt(square) : 0
-      for (let t = 0; t < frames; t++) {
-        columns[i * frames + ((t + shift) % frames)] = (rows.value(t, i) - sum / frames) * scale
+      for (let t = frames - 1; t >= 0; t--) {
+        total += weight
+        sum += weight * columns[start + t]!
+        weight *= decay
       }
+      let squares = 0
+      weight = 1
+      for (let t = frames - 1; t >= 0; t--) {
+        const x = (columns[start + t]! - sum / total) * Math.sqrt(weight)
+        columns[start + t] = x
+        squares += x * x
+        weight *= decay
+      }
+      const scale = squares > 0 ? 1 / Math.sqrt(squares) : 0
+      for (let t = 0; t < frames; t++) columns[start + t] = columns[start + t]! * scale
     }
-    const matrix = new Float64Array(n * n)
+  }
+
+  #correlate(n: number, frames: number): void {
+    if (this.#matrix.length !== n * n) this.#matrix = new Float64Array(n * n)
+    const columns = this.#columns
     for (let i = 0; i < n; i++) {
-      for (let j = 0; j <= i; j++) {
+      this.#matrix[i * n + i] = 1
+      for (let j = 0; j < i; j++) {
         let inner = 0
         for (let t = 0; t < frames; t++) inner += columns[i * frames + t]! * columns[j * frames + t]!
-        matrix[i * n + j] = inner
+        this.#matrix[i * n + j] = inner
       }
     }
-    this.#draws.push(this.#solver.solve(matrix, n, 0).values[0]!)
-    if (this.#draws.length > drawsKept) this.#draws.shift()
-    return this.limit
   }
 
-  get limit(): ResampledLimit | null {
-    const n = this.#draws.length
-    if (n < drawsWanted) return null
-    const sorted = [...this.#draws].sort((a, b) => a - b)
-    return { upper: sorted[n >> 1]!, limit: sorted[Math.min(n - 1, Math.ceil((1 - this.#level) * n))]! }
-  }
-
-  /** mulberry32, from memory. */
+  /** A whole number below `limit`: mulberry32 (Tommy Ettinger, public domain; from memory). */
   #below(limit: number): number {
     this.#state = (this.#state + 0x6d2b79f5) >>> 0
     let t = this.#state
@@ -73,16 +148,31 @@ export class ResampledEdge {
   }
 
   snapshot(): ResampledEdgeSnapshot {
-    return { draws: [...this.#draws], state: this.#state }
+    return { spectra: this.#spectra.map((values) => values.slice()), next: this.#next, state: this.#state }
   }
 
-  restore({ draws, state }: ResampledEdgeSnapshot): void {
-    this.#draws = [...draws]
+  restore(snapshot: unknown): void {
+    const { spectra, next, state } = snapshot as ResampledEdgeSnapshot
+    this.#spectra = spectra.map((values) => values.slice())
+    this.#next = next
     this.#state = state
   }
 }
 
-export interface ResampledEdgeSnapshot {
-  readonly draws: readonly number[]
+interface ResampledEdgeSnapshot {
+  readonly spectra: readonly Float64Array[]
+  readonly next: number
   readonly state: number
+}
+
+function limitOf(ascending: Float64Array, level: number): number {
+  const draws = ascending.length
+  const rank = Math.ceil((draws + 1) * (1 - level))
+  if (rank <= draws) return ascending[rank - 1]!
+  let mean = 0
+  for (const x of ascending) mean += x / draws
+  let square = 0
+  for (const x of ascending) square += (x - mean) ** 2 / (draws - 1)
+  const extended = mean + (Math.sqrt(square) * (tracyWidomUpper(level) - lawMean)) / lawDeviation
+  return Math.max(extended, ascending[draws - 1]!)
 }

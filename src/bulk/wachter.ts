@@ -1,4 +1,4 @@
-import type { Edges } from './marchenko-pastur.ts'
+import type { Edges } from './edges.ts'
 
 /**
  * Edges of C0^{-1/2} C C0^{-1/2} when nothing changed, y1 = N/T, y2 = N/T0 < 1:

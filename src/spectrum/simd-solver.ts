@@ -25,15 +25,7 @@ class SimdCore implements TridiagonalCore {
     const room = this.#room
     room.shape(n)
     room.load(matrix, n, scale)
-    room.kernels.tridiagonalise(
-      room.matrix,
-      n,
-      room.ld,
-      room.diagonal,
-      room.coupling,
-      room.tau,
-      room.work,
-    )
+    room.kernels.tridiagonalise(room.matrix, n, room.ld, room.diagonal, room.coupling, room.tau, room.work)
     diagonal.set(room.view(room.diagonal, n))
     coupling.set(room.view(room.coupling, n))
   }

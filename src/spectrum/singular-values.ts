@@ -1,4 +1,6 @@
 const mostSweeps = 60
+/** Rows whose cosine is below this count as orthogonal. */
+const orthogonal = 1e-14
 
 /**
  * Singular values, largest first, of a matrix of `k` rows of `n` entries, k ≤ n, by one-sided Jacobi
@@ -33,7 +35,7 @@ function turn(a: Float64Array, p: number, q: number, n: number): boolean {
     qq += y * y
     pq += x * y
   }
-  if (Math.abs(pq) <= 2 * Number.EPSILON * Math.sqrt(pp * qq)) return false
+  if (Math.abs(pq) <= orthogonal * Math.sqrt(pp * qq)) return false
   const slope = (qq - pp) / (2 * pq)
   const t = (slope < 0 ? -1 : 1) / (Math.abs(slope) + Math.sqrt(1 + slope * slope))
   const c = 1 / Math.sqrt(1 + t * t)

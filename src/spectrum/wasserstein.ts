@@ -1,12 +1,16 @@
 /**
  * W2 between two empirical spectral distributions, in units of an eigenvalue. Both spectra are sorted,
- * largest first, and not empty. Equally long: √(Σ(aᵢ − bᵢ)²/N), since on the line the sorted coupling is
+ * largest first. Equally long: √(Σ(aᵢ − bᵢ)²/N), since on the line the sorted coupling is
  * the best one; else the same coupling of quantiles, √∫(F⁻¹ − G⁻¹)² (Villani 2003, Topics in Optimal
- * Transportation, theorem 2.18).
+ * Transportation, theorem 2.18). Two empty spectra are 0 apart.
+ *
+ * @throws RangeError when only one spectrum is empty
  */
 export function wasserstein2(a: Float64Array, b: Float64Array): number {
   const n = a.length
   const m = b.length
+  if (n === 0 && m === 0) return 0
+  if (n === 0 || m === 0) throw new RangeError('an empty spectrum has no distance from one that is not')
   let sum = 0
   if (n === m) {
     for (let i = 0; i < n; i++) {
