@@ -11,7 +11,8 @@ export const dropReasons = {
   'not-positive': 'the value is zero or negative and the increment is a log-return',
   'bad-signal': 'the signal name is empty, longer than 200 characters or holds control characters',
   'unknown-signal': 'no ensemble watches a signal of that name',
-  'too-many-signals': 'the pattern of the ensemble matches more signals than its limit allows',
+  'too-many-signals':
+    'the feed, or the pattern of the ensemble, has more different signals than its limit allows',
   late: 'the frame to which the reading belongs was closed before it came',
   closed: 'the reading lies outside the trading sessions',
   duplicate: 'a reading of the same signal and time was already taken',
