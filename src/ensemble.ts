@@ -7,6 +7,7 @@ import type { SignalCondition } from './frames/hygiene.ts'
 import type { Observation, RegimeWatch, Verdict } from './regime/regime.ts'
 import { leadingShare } from './spectrum/shares.ts'
 import type { SymmetricSolver } from './spectrum/spectrum.ts'
+import { SpectrumRing } from './spectrum/spectrum-ring.ts'
 import type { LaggedWindow } from './window/lagged-window.ts'
 import type { TwinWindow } from './window/twin-window.ts'
 
@@ -69,6 +70,8 @@ export class Ensemble {
   #parts: EnsembleParts
   #matrix = new Float64Array(0)
   #laggedMatrix = new Float64Array(0)
+  /** Spectra of the last windows, as many as the lag; null without one. */
+  #spectra: SpectrumRing | null
   /** Leading modes asked of the solver: one more than escaped in the frame before. */
   #modes = 2
   /** Fixed scales of covariance, by roster index; null until the window was first full. */
@@ -78,6 +81,7 @@ export class Ensemble {
     this.name = parts.name
     this.title = parts.title
     this.#parts = parts
+    this.#spectra = parts.lagged === null ? null : new SpectrumRing(parts.lagged.lag)
   }
 
   drawsFrom(feed: string): boolean {
@@ -150,6 +154,8 @@ export class Ensemble {
       bulk = this.#parts.bulk.fit(spectrum, effective)
     }
     if (bulk !== null) this.#modes = Math.max(2, bulk.escapes.length + 1)
+    const reference = lagged === null ? null : this.#laggedReference(active)
+    this.#spectra?.push(active, spectrum)
     const fitted = lap()
     const span = { frames: window.cleaned.frames, effective }
     const verdict = watch.push({
@@ -164,7 +170,7 @@ export class Ensemble {
       bulk,
       window: span,
       certificate,
-      ...(lagged === null ? {} : { reference: this.#laggedReference(active) }),
+      ...(lagged === null ? {} : { reference }),
     })
     const judged = lap()
     return {
@@ -208,7 +214,7 @@ export class Ensemble {
     if (this.#laggedMatrix.length !== entries) this.#laggedMatrix = new Float64Array(entries)
     if (scale === 'covariance') lagged.covariance(this.#laggedMatrix, active, this.#fixedScales())
     else lagged.correlation(this.#laggedMatrix, active)
-    const spectrum = solver.solve(this.#laggedMatrix, active.length, 1)
+    const spectrum = this.#spectra?.oldest(active) ?? solver.solve(this.#laggedMatrix, active.length, 1)
     return { matrix: this.#laggedMatrix, spectrum, signals: lagged.active() }
   }
 
@@ -231,6 +237,7 @@ export class Ensemble {
       maker: maker.snapshot(),
       window: window.snapshot(),
       lagged: lagged?.snapshot() ?? null,
+      spectra: this.#spectra?.snapshot() ?? null,
       watch: watch.snapshot(),
       modes: this.#modes,
       scales: this.#scales?.slice() ?? null,
@@ -243,6 +250,7 @@ export class Ensemble {
     maker.restore(s.maker)
     window.restore(s.window)
     lagged?.restore(s.lagged)
+    this.#spectra?.restore(s.spectra)
     watch.restore(s.watch)
     this.#modes = s.modes
     this.#scales = s.scales
@@ -254,6 +262,7 @@ export interface EnsembleSnapshot {
   readonly maker: unknown
   readonly window: unknown
   readonly lagged: unknown
+  readonly spectra: unknown
   readonly watch: unknown
   readonly modes: number
   readonly scales: Float64Array | null

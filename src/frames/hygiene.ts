@@ -27,6 +27,8 @@ const disorderAllowed = 0.2
 
 /** What is known of one signal, by place. */
 interface Watched {
+  /** The kinds of its open findings, one bit each in the order of `findingKinds`. */
+  open: number
   /** Readings of the open step that came twice, and out of order. */
   twice: number
   disordered: number
@@ -166,8 +168,9 @@ export class Hygiene {
     if (fresh) {
       signal.frames++
       if (!signal.seen || value !== signal.value) {
-        if (signal.seen && !this.#open.has(keyOf('stuck', place)))
+        if (signal.seen && (signal.open & stuckBit) === 0) {
           signal.longest = Math.max(signal.longest, signal.unmoved)
+        }
         signal.value = value
         signal.seen = true
         signal.unmoved = 0
@@ -178,15 +181,27 @@ export class Hygiene {
     const allowed = Math.max(unmovedAllowed, unmovedFactor * signal.longest)
     const learnt = signal.frames - signal.unmoved >= historyWanted && signal.unmoved > allowed
     const stuck = fresh && (stuckAfter === null ? learnt : time - signal.unmovedSince > stuckAfter)
-    const keeps = !fresh && this.#open.has(keyOf('stuck', place))
-    this.#say('stuck', place, stuck || keeps, signal.unmovedSince, time, `repeats the value ${signal.value}`)
+    const keeps = !fresh && (signal.open & stuckBit) !== 0
+    if (stuck || keeps || (signal.open & stuckBit) !== 0) {
+      this.#say(
+        'stuck',
+        place,
+        stuck || keeps,
+        signal.unmovedSince,
+        time,
+        `repeats the value ${signal.value}`,
+      )
+    }
     return !stuck
   }
 
   #say(finding: FindingKind, place: number, on: boolean, from: number, time: number, detail: string): void {
+    const signal = this.#signals[place]!
+    const bit = 1 << findingKinds.indexOf(finding)
+    if (on === ((signal.open & bit) !== 0)) return
+    signal.open ^= bit
     const key = keyOf(finding, place)
     const open = this.#open.get(key)
-    if (on === (open !== undefined)) return
     if (open === undefined) {
       const begun: Finding = { signal: this.#nameOf(place), finding, from, to: null, detail }
       this.#open.set(key, begun)
@@ -200,6 +215,7 @@ export class Hygiene {
   #signal(place: number): Watched {
     while (this.#signals.length <= place) {
       this.#signals.push({
+        open: 0,
         twice: 0,
         disordered: 0,
         value: 0,
@@ -235,6 +251,7 @@ export class Hygiene {
 }
 
 const nothing: readonly Finding[] = []
+const stuckBit = 1 << findingKinds.indexOf('stuck')
 const keyOf = (finding: FindingKind, place: number): number => place * 8 + findingKinds.indexOf(finding)
 
 function countDisorder(signal: Watched, arrivals: number): void {

@@ -134,14 +134,12 @@ export class MomentEstimator implements Estimator {
     for (const i of active) scales[i] = Math.sqrt(this.variance(i))
     this.#fill(out, active, scales)
     const n = active.length
-    for (let a = 0; a < n; a++) {
-      for (let b = 0; b < a; b++) {
-        const r = Math.min(1, Math.max(-1, out[a * n + b]!))
-        out[a * n + b] = r
-        out[b * n + a] = r
-      }
-      out[a * n + a] = 1
+    for (let k = 0; k < n * n; k++) {
+      const r = out[k]!
+      if (r > 1) out[k] = 1
+      else if (r < -1) out[k] = -1
     }
+    for (let a = 0; a < n; a++) out[a * n + a] = 1
   }
 
   /**
@@ -270,12 +268,12 @@ export class MomentEstimator implements Estimator {
       const row = triangleSize(i)
       const sum = this.#sum[i]!
       const factor = factors[a]!
+      const at = a * n
       for (let b = 0; b <= a; b++) {
-        const m = (second[row + active[b]!]! - sum * means[b]!) * factor * factors[b]!
-        out[a * n + b] = m
-        out[b * n + a] = m
+        out[at + b] = (second[row + active[b]!]! - sum * means[b]!) * factor * factors[b]!
       }
     }
+    mirror(out, n)
   }
 
   #load(x: Float64Array, present: Uint8Array, y: Float64Array, p: Uint8Array, entering: boolean): void {
@@ -355,6 +353,21 @@ export class MomentEstimator implements Estimator {
     this.#presentY = new Uint8Array(capacity)
     this.#presentZ = new Uint8Array(capacity)
     this.#gaps = this.#gaps?.resized(capacity) ?? null
+  }
+}
+
+const tile = 16
+
+/** Copies the lower triangle of an n × n matrix to the upper, tile by tile, so that both stay in the cache. */
+function mirror(out: Float64Array, n: number): void {
+  for (let top = 0; top < n; top += tile) {
+    const bottom = Math.min(n, top + tile)
+    for (let left = 0; left <= top; left += tile) {
+      for (let a = top; a < bottom; a++) {
+        const right = Math.min(a, left + tile)
+        for (let b = left; b < right; b++) out[b * n + a] = out[a * n + b]!
+      }
+    }
   }
 }
 
