@@ -12,7 +12,12 @@ interface Figures {
   readonly data: OpenDataId
   readonly T: number
   readonly edge: number
-  readonly share: { readonly mean?: number; readonly median?: number; readonly max: Dated; readonly min: Dated }
+  readonly share: {
+    readonly mean?: number
+    readonly median?: number
+    readonly max: Dated
+    readonly min: Dated
+  }
   readonly meanW2?: number
   readonly meanCounts?: readonly [number, number]
   readonly days: readonly Day[]
@@ -129,14 +134,20 @@ describe.each(tables)('replay --json of $data with T = $T', (figures) => {
   withRecords('has the leading share of every stated day', (records, n) => {
     for (const expected of figures.days) {
       const found = records.find((record) => day(record) === expected.date)!
-      if (expected.share !== undefined) expect([expected.date, to4(found.share!)]).toEqual([expected.date, expected.share])
-      if (expected.lambda1 !== undefined) expect([expected.date, to4(found.leading[0]!)]).toEqual([expected.date, expected.lambda1])
-      if (expected.w2 !== undefined) expect([expected.date, to4(found.distance!.w2)]).toEqual([expected.date, expected.w2])
+      if (expected.share !== undefined)
+        expect([expected.date, to4(found.share!)]).toEqual([expected.date, expected.share])
+      if (expected.lambda1 !== undefined)
+        expect([expected.date, to4(found.leading[0]!)]).toEqual([expected.date, expected.lambda1])
+      if (expected.w2 !== undefined)
+        expect([expected.date, to4(found.distance!.w2)]).toEqual([expected.date, expected.w2])
       if (expected.ceiling !== undefined) {
         expect([expected.date, to4(found.distance!.ceiling)]).toEqual([expected.date, expected.ceiling])
       }
       if (expected.counts !== undefined) {
-        expect([expected.date, ...countsAbove(found, n, figures.T)]).toEqual([expected.date, ...expected.counts])
+        expect([expected.date, ...countsAbove(found, n, figures.T)]).toEqual([
+          expected.date,
+          ...expected.counts,
+        ])
       }
     }
   })
@@ -177,8 +188,9 @@ describe.each(tables)('replay --json of $data with T = $T', (figures) => {
     expect(to4(marchenkoPasturEdges(n / figures.T, 1).upper)).toBe(figures.edge)
     if (figures.meanCounts === undefined) return
     const counts = records.map((record) => countsAbove(record, n, figures.T))
-    expect(to4(mean(counts.map(([n1]) => n1)))).toBe(figures.meanCounts[0])
-    expect(to4(mean(counts.map(([, n2]) => n2)))).toBe(figures.meanCounts[1])
+    // The table cuts 3463/2429 = 1.42569 to 1.4256, so its last digit is held loosely here.
+    expect(Math.abs(mean(counts.map(([n1]) => n1)) - figures.meanCounts[0])).toBeLessThan(1e-4)
+    expect(Math.abs(mean(counts.map(([, n2]) => n2)) - figures.meanCounts[1])).toBeLessThan(1e-4)
   })
 })
 
