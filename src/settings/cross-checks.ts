@@ -41,6 +41,12 @@ function wholeFaults(settings: Settings, defined: DefinedNames): Fault[] {
   const pipes = Object.keys(feeds).filter((name) => 'stdin' in feeds[name]!)
   for (const name of pipes.slice(1))
     faults.push(conflict(['feeds', name], `Standard input is already read by the feed ${pipes[0]}.`))
+  for (const [name, feed] of Object.entries(feeds))
+    if ('kafka' in feed && typeof feed.format === 'object' && 'csv' in feed.format)
+      faults.push({
+        ...conflict(['feeds', name, 'format'], 'A table with a head line cannot come on a Kafka topic.'),
+        allowed: 'ndjson, senml, or pointers',
+      })
   if (hostAndPort(page.listen) !== null && !isLoopback(page.listen) && page.token === undefined)
     faults.push({
       code: 'settings-exposed',

@@ -177,6 +177,8 @@ class Reader {
     this.places.set(keyText(path), { ...place, shown: JSON.stringify(cut(value)), names })
     this.secrets.push(...secrets)
     for (const sentence of faults) this.fault('variable', path, place.value, sentence)
+    if (text === '' && names.length > 0 && faults.length === 0)
+      this.fault('variable', path, place.value, `${names.join(', ')} is set to nothing.`)
     return text
   }
 

@@ -531,6 +531,11 @@ export const wrongSettings: readonly WrongSetting[] = [
     code: 'settings-variable',
     key: 'page.token',
   }),
+  is('a variable that is empty', `${sound}page: { token: ‸"\${PAGE_TOKEN}" }\n`, {
+    code: 'settings-variable',
+    key: 'page.token',
+    env: { PAGE_TOKEN: '' },
+  }),
   is('a variable with a hyphen', `${sound}page: { token: ‸"\${PAGE-TOKEN}" }\n`, {
     code: 'settings-variable',
     key: 'page.token',
