@@ -1,7 +1,7 @@
 import { type Command, InvalidArgumentError, Option } from 'commander'
 import { type LogLevel, logLevels, type SharedOptions, type Surroundings } from './commands.ts'
 
-export const defaultSettingsPath = 'tautline.yaml'
+const defaultSettingsPath = 'tautline.yaml'
 
 interface GlobalFlags {
   readonly settings: string

@@ -18,7 +18,7 @@ export function hostAndPort(address: string): { readonly host: string; readonly 
 }
 
 /** Whether a host is this machine itself: localhost (RFC 6761), 127.0.0.0/8 (RFC 1122) or ::1 (RFC 4291). */
-export function isLoopbackHost(host: string): boolean {
+function isLoopbackHost(host: string): boolean {
   const bare = host.toLowerCase().replace(/\.$/, '')
   return (
     bare === 'localhost' ||

@@ -44,7 +44,7 @@ export const clockSchema = z
   })
   .meta({ title: 'Clock', description: 'The clock of the ensemble, in event time.' })
 
-export const signalsSchema = z
+const signalsSchema = z
   .union([
     z.array(text).min(2).max(5000).meta({ description: 'The signals by name.' }),
     z.strictObject({
@@ -58,7 +58,7 @@ export const signalsSchema = z
   ])
   .meta({ description: 'The signals that are watched together: a list, a pattern or a file.' })
 
-export const windowSchema = z
+const windowSchema = z
   .union([
     z.strictObject({
       frames: z.number().int().min(8).max(1_000_000).meta({ description: 'The last so many frames.' }),
@@ -75,7 +75,7 @@ export const windowSchema = z
 
 const referenceFrames = z.number().int().min(16).max(1_000_000)
 
-export const referenceSchema = z
+const referenceSchema = z
   .union([
     z.strictObject({
       frames: referenceFrames.meta({ description: 'Learnt from the first so many frames.' }),
@@ -106,7 +106,7 @@ export const referenceSchema = z
   ])
   .meta({ description: 'The state that the present is compared with.' })
 
-export const plannedSchema = z
+const plannedSchema = z
   .strictObject({
     from: z.iso
       .datetime({ offset: true })

@@ -89,7 +89,7 @@ const kindWords: Readonly<Record<Kind, string>> = {
 }
 
 /** A `secret` mark anywhere between the field and what is written. */
-export function isSecret(schema: Schema): boolean {
+function isSecret(schema: Schema): boolean {
   for (let layer = schema; ; ) {
     if (z.globalRegistry.get(layer)?.secret === true) return true
     const inner = written(layer)

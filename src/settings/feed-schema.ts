@@ -42,7 +42,7 @@ const unit = timeUnit
   .default('rfc3339')
   .meta({ description: 'How times are written: RFC 3339, or a number since 1970 UTC in this unit.' })
 
-export const pointersSchema = z
+const pointersSchema = z
   .strictObject({
     signal: pointer.meta({ description: 'Pointer to the name of the signal.', examples: ['/sym'] }),
     time: pointer.meta({ description: 'Pointer to the event time.', examples: ['/ts'] }),

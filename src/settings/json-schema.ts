@@ -2,7 +2,7 @@ import { z } from 'zod'
 import { settingsSchema } from './schema.ts'
 
 /** Where the schema is published with the package; an identifier, not an address to fetch. */
-export const settingsSchemaId = 'urn:tautline:settings:1'
+const settingsSchemaId = 'urn:tautline:settings:1'
 
 const placeholder = '\\$\\{[A-Za-z_][A-Za-z0-9_]*\\}'
 

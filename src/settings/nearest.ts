@@ -2,7 +2,7 @@
  * Number of letters to insert, leave out, change or swap with their neighbour to turn one word into the
  * other (optimal string alignment; Damerau 1964, Levenshtein 1966).
  */
-export function editDistance(a: string, b: string): number {
+function editDistance(a: string, b: string): number {
   let beforeLast: number[] = []
   let last = Array.from({ length: b.length + 1 }, (_, j) => j)
   for (let i = 1; i <= a.length; i++) {

@@ -3,7 +3,7 @@ import { type ErrorCode, errorCatalogue } from '../errors.ts'
 /** Way to a value from the top of the file: keys of maps, places in lists from 0. */
 export type Path = readonly (string | number)[]
 
-export type SettingsCode = Extract<ErrorCode, `settings-${string}`>
+type SettingsCode = Extract<ErrorCode, `settings-${string}`>
 
 /** One thing that is wrong with the settings, or, as a warning, likely not meant. */
 export interface SettingsProblem {

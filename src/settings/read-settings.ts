@@ -12,7 +12,7 @@ import { Secrets } from './secrets.ts'
 import type { Environment } from './substitution.ts'
 
 /** Largest settings file, in bytes. */
-export const largestSettings = 1024 * 1024
+const largestSettings = 1024 * 1024
 
 export interface ReadSettings {
   readonly settings: Settings

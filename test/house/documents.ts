@@ -6,7 +6,7 @@ import { settingsSchema } from '../../src/settings/schema.ts'
 import { isExclusive, type ObjectOption } from '../../src/settings/variants.ts'
 
 /** Tables of the README that are made from the source, by the name of their markers. */
-export const tables: Readonly<Record<string, () => string>> = {
+const tables: Readonly<Record<string, () => string>> = {
   settings: settingsTable,
   errors: () =>
     table(
