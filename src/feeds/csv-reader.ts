@@ -4,7 +4,7 @@ import { type CsvFormat, type CsvHeader, headerFault } from './csv-header.ts'
 import { CsvRow, incomplete } from './csv-row.ts'
 import { NumberScanner, readDecimal } from './decimal.ts'
 import { afterMark, lineFeed, type RecordReader, tooLong } from './record-reader.ts'
-import { readTime, type TimeUnit } from './times.ts'
+import { readTime } from './times.ts'
 
 const badTime = 'the cell of the time column is no time of the years 1900 to 2200 in the unit stated'
 const badValue = 'a cell is no finite decimal number'
