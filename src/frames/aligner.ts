@@ -1,3 +1,4 @@
+import { KeyHeap } from './key-heap.ts'
 import type { Roster } from './roster.ts'
 import type { Sessions } from './sessions.ts'
 
@@ -51,6 +52,8 @@ export class Aligner {
   readonly #options: AlignerOptions
   readonly #roster: Roster
   readonly #slots = new Map<number, Slot>()
+  /** The keys of the slots. */
+  readonly #waiting = new KeyHeap()
   #spare: Slot[] = []
   #slot: Slot | null = null
   /** Key of the last closed step; NaN before the first. */
@@ -126,8 +129,7 @@ export class Aligner {
    * else the earliest for which readings wait. Without a waiting reading nothing is due.
    */
   #next(): number {
-    let earliest = Number.POSITIVE_INFINITY
-    for (const key of this.#slots.keys()) if (key < earliest) earliest = key
+    const earliest = this.#waiting.least
     const { step, sessions } = this.#options
     if (step === 'row' || Number.isNaN(this.#closed)) return earliest
     const following = this.#closed + 1
@@ -183,12 +185,14 @@ export class Aligner {
       value: recycled?.value ?? new Float64Array(0),
     }
     this.#slots.set(key, slot)
+    this.#waiting.push(key)
     this.#expect()
     return slot
   }
 
   #recycle(slot: Slot): void {
     this.#slots.delete(slot.key)
+    this.#waiting.pop()
     if (this.#slot === slot) this.#slot = null
     if (this.#spare.length < 8) this.#spare.push(slot)
   }
@@ -221,10 +225,13 @@ export class Aligner {
 
   restore(s: AlignerSnapshot): void {
     this.#slots.clear()
+    this.#waiting.clear()
     this.#slot = null
     this.#spare = []
-    for (const { key, time, value } of s.slots)
+    for (const { key, time, value } of s.slots) {
       this.#slots.set(key, { key, time: time.slice(), value: value.slice() })
+      this.#waiting.push(key)
+    }
     this.#closed = s.closed
     this.#session = s.session
     this.#value = s.value.slice()
