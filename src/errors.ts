@@ -139,6 +139,16 @@ export const errorCatalogue = {
     sentence: 'The report cannot be written.',
     remedy: 'Give --report a path in a folder that exists and may be written to.',
   },
+  // page
+  'page-unopened': {
+    sentence: 'The page cannot listen on its address.',
+    remedy:
+      'Give another page.listen (for the demo --port), or end what listens there already; EADDRINUSE means that something does.',
+  },
+  'page-unbuilt': {
+    sentence: 'The browser part of the page is missing.',
+    remedy: 'Run `npm run build`.',
+  },
   // command line
   'nothing-to-explain': {
     sentence: 'The store holds nothing of that name.',
