@@ -35,7 +35,7 @@ export class CsvReader implements RecordReader {
       if (after !== incomplete) {
         out.nextRecord()
         this.#take(bytes, p, after, out)
-        if (this.failure !== null) return to
+        if (this.failure !== null) return p
         out.line += this.#row.lines
         p = after
       } else if (!final && to - p <= this.#limit) break
