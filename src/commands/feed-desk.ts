@@ -27,7 +27,8 @@ export class FeedDesk {
         this.#metrics.readings(name, count)
         this.#metrics.dropped(name, dropped)
         this.#page.feed(name, { readings: count, dropped })
-        if (event.behind !== null) this.#setBehind(name, event.source, event.behind)
+        if (event.behind === null) this.#health.caughtUp(name)
+        else this.#setBehind(name, event.source, event.behind)
         break
       }
       case 'caught-up':
