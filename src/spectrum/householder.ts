@@ -1,3 +1,9 @@
+/**
+ * A sum of squares below this is none: the matrix comes scaled to largest entry about 1, and squares this
+ * small have lost their precision.
+ */
+const vanishing = 1e-280
+
 /** Scratch of `tridiagonalise`: four vectors of at least n entries. */
 export interface HouseholderWork {
   readonly v: Float64Array
@@ -41,7 +47,7 @@ export function tridiagonalise(
     const alpha = a[row + i - 1]! - vi * w[i - 1]! - wi * v[i - 1]!
     diagonal[i] = a[row + i]! - 2 * vi * wi
     let factor = 0
-    if (tail === 0) {
+    if (tail < vanishing) {
       coupling[i] = alpha
       x.fill(0, 0, i)
     } else {

@@ -1,14 +1,17 @@
+import { tridiagonalQl } from './tridiagonal-ql.ts'
+
 /** Eigenvalues closer than this, relative to the norm, form a cluster whose vectors are kept orthogonal. */
 const clusterWidth = 1e-3
+const fewestSteps = 2
 const mostSteps = 5
-const mostStarts = 4
-/** A vector whose solve has grown by this over the norm has a residual of its inverse: the least accepted. */
-const leastGrowth = 1e10
+/** Residual of a vector, over the order and the norm, that counts as rounding. */
+const roundingSize = 2 * Number.EPSILON
 
 /**
  * Eigenvectors of a symmetric tridiagonal matrix by inverse iteration (Wilkinson 1965; Peters & Wilkinson
  * 1979): the shifted system is factored with partial pivoting, vectors of clustered eigenvalues are
- * orthogonalised against each other. All scratch is kept between calls.
+ * orthogonalised against each other. Where that does not reach rounding, QL with vectors takes over. All
+ * scratch is kept between calls.
  */
 export class TridiagonalVectors {
   #upper0 = new Float64Array(0)
@@ -16,6 +19,7 @@ export class TridiagonalVectors {
   #upper2 = new Float64Array(0)
   #factor = new Float64Array(0)
   #swapped = new Uint8Array(0)
+  #fallback: Fallback | null = null
 
   /**
    * `diagonal` has n entries, `coupling[i]` joins i − 1 and i (coupling[0] unused). Writes the vectors of
@@ -33,47 +37,63 @@ export class TridiagonalVectors {
   ): boolean {
     this.#reserve(n)
     const norm = normOf(diagonal, coupling, n)
+    const wanted = roundingSize * n * norm
     let clusterStart = 0
     for (let j = 0; j < k; j++) {
       if (j > 0 && values[j - 1]! - values[j]! > clusterWidth * norm) clusterStart = j
       this.#factorise(diagonal, coupling, n, values[j]!, norm)
-      let growth = 0
-      for (let start = 0; start < mostStarts && !(growth >= leastGrowth / norm); start++) {
-        growth = this.#iterate(out, stride, clusterStart, j, n, norm, start)
+      this.#startWith(out, j * stride, j, n)
+      this.#orthogonalise(out, stride, clusterStart, j, n)
+      let residual = Infinity
+      for (let step = 0; step < mostSteps && (step < fewestSteps || !(residual <= wanted)); step++) {
+        this.#solve(out, j * stride, n)
+        const whole = this.#orthogonalise(out, stride, clusterStart, j, n)
+        residual = whole ? residualOf(diagonal, coupling, n, values[j]!, out, j * stride) : Number.NaN
       }
-      if (!(growth >= leastGrowth / norm)) return false
+      if (!(residual <= wanted)) {
+        return this.#fallBack(diagonal, coupling, n, k, out, stride)
+      }
     }
     return true
   }
 
-  /** Inverse iteration for vector j; gives the last growth of its norm in a solve. */
-  #iterate(
+  #fallBack(
+    diagonal: Float64Array,
+    coupling: Float64Array,
+    n: number,
+    k: number,
     out: Float64Array,
     stride: number,
-    clusterStart: number,
-    j: number,
-    n: number,
-    norm: number,
-    start: number,
-  ): number {
-    const x = out.subarray(j * stride, j * stride + n)
-    for (let i = 0; i < n; i++) x[i] = startEntry(i, j + start * n)
-    this.#orthogonalise(out, stride, clusterStart, j, n)
-    let growth = 0
-    for (let step = 0; step < mostSteps; step++) {
-      this.#solve(x, n)
-      growth = this.#orthogonalise(out, stride, clusterStart, j, n)
-      if (step > 0 && growth > 0.01 / (Number.EPSILON * n * norm)) break
+  ): boolean {
+    if (this.#fallback === null || this.#fallback.order < n) this.#fallback = fallbackFor(n)
+    const { values, couplings, rows, ranks } = this.#fallback
+    values.set(diagonal.subarray(0, n))
+    couplings.set(coupling.subarray(0, n))
+    if (!tridiagonalQl(values, couplings, n, rows)) return false
+    const byValue = ranks.subarray(0, n)
+    for (let i = 0; i < n; i++) byValue[i] = i
+    byValue.sort((a, b) => values[b]! - values[a]!)
+    for (let j = 0; j < k; j++) {
+      const row = byValue[j]! * n
+      out.set(rows.subarray(row, row + n), j * stride)
     }
-    return growth
+    return true
   }
 
-  /** Takes the earlier vectors of the cluster out of vector j and brings it to norm 1; gives its norm before. */
-  #orthogonalise(out: Float64Array, stride: number, from: number, j: number, n: number): number {
+  /** A start without symmetry, another for each vector: fractional parts of multiples of the golden ratio. */
+  #startWith(out: Float64Array, at: number, j: number, n: number): void {
+    for (let i = 0; i < n; i++) {
+      const multiple = (i + 1) * (j + 1.5) * 0.6180339887498949
+      out[at + i] = multiple - Math.floor(multiple) - 0.5
+    }
+  }
+
+  /** Takes the earlier vectors of the cluster out of vector j and brings it to norm 1; false when nothing is left. */
+  #orthogonalise(out: Float64Array, stride: number, from: number, j: number, n: number): boolean {
     const x = j * stride
     let before = 0
     for (let i = 0; i < n; i++) before = Math.max(before, Math.abs(out[x + i]!))
-    if (before === 0) return 0
+    if (before === 0) return false
     for (let i = 0; i < n; i++) out[x + i] = out[x + i]! / before
     for (let pass = 0; pass < 2; pass++) {
       for (let c = from; c < j; c++) {
@@ -86,23 +106,23 @@ export class TridiagonalVectors {
     let square = 0
     for (let i = 0; i < n; i++) square += out[x + i]! * out[x + i]!
     const length = Math.sqrt(square)
-    if (length === 0) return 0
+    if (length === 0) return false
     for (let i = 0; i < n; i++) out[x + i] = out[x + i]! / length
-    return before * length
+    return true
   }
 
   #factorise(d: Float64Array, e: Float64Array, n: number, shift: number, norm: number): void {
     const u0 = this.#upper0
     const u1 = this.#upper1
     const u2 = this.#upper2
-    const tiny = Math.max(Number.EPSILON * norm, 1e-290)
+    const tiny = Number.EPSILON * norm
     let pivot = d[0]! - shift
     let next = n > 1 ? e[1]! : 0
     for (let i = 0; i < n - 1; i++) {
       const below = e[i + 1]!
       const belowDiagonal = d[i + 1]! - shift
       const belowNext = i + 2 < n ? e[i + 2]! : 0
-      if (Math.abs(below) > Math.abs(pivot)) {
+      if (Math.abs(below) > Math.max(Math.abs(pivot), tiny)) {
         const f = pivot / below
         u0[i] = below
         u1[i] = belowDiagonal
@@ -128,20 +148,23 @@ export class TridiagonalVectors {
     u2[n - 1] = 0
   }
 
-  #solve(x: Float64Array, n: number): void {
+  #solve(out: Float64Array, at: number, n: number): void {
     for (let i = 0; i < n - 1; i++) {
       const f = this.#factor[i]!
+      const here = out[at + i]!
+      const below = out[at + i + 1]!
       if (this.#swapped[i] === 1) {
-        const below = x[i + 1]!
-        x[i + 1] = x[i]! - f * below
-        x[i] = below
-      } else x[i + 1] = x[i + 1]! - f * x[i]!
+        out[at + i] = below
+        out[at + i + 1] = here - f * below
+      } else out[at + i + 1] = below - f * here
     }
+    let after = 0
+    let afterNext = 0
     for (let i = n - 1; i >= 0; i--) {
-      let sum = x[i]!
-      if (i + 1 < n) sum -= this.#upper1[i]! * x[i + 1]!
-      if (i + 2 < n) sum -= this.#upper2[i]! * x[i + 2]!
-      x[i] = sum / this.#upper0[i]!
+      const x = (out[at + i]! - this.#upper1[i]! * after - this.#upper2[i]! * afterNext) / this.#upper0[i]!
+      out[at + i] = x
+      afterNext = after
+      after = x
     }
   }
 
@@ -155,6 +178,22 @@ export class TridiagonalVectors {
   }
 }
 
+interface Fallback {
+  readonly order: number
+  readonly values: Float64Array
+  readonly couplings: Float64Array
+  readonly rows: Float64Array
+  readonly ranks: Int32Array
+}
+
+const fallbackFor = (order: number): Fallback => ({
+  order,
+  values: new Float64Array(order),
+  couplings: new Float64Array(order),
+  rows: new Float64Array(order * order),
+  ranks: new Int32Array(order),
+})
+
 /** Largest absolute row sum; 1 for a zero matrix. */
 function normOf(diagonal: Float64Array, coupling: Float64Array, n: number): number {
   let norm = 0
@@ -166,8 +205,23 @@ function normOf(diagonal: Float64Array, coupling: Float64Array, n: number): numb
   return norm > 0 ? norm : 1
 }
 
-/** A start without symmetry, another for each vector: fractional parts of multiples of the golden ratio. */
-function startEntry(i: number, j: number): number {
-  const multiple = (i + 1) * (j + 1.5) * 0.6180339887498949
-  return multiple - Math.floor(multiple) - 0.5
+/** Largest entry of T x − value x. */
+function residualOf(
+  diagonal: Float64Array,
+  coupling: Float64Array,
+  n: number,
+  value: number,
+  out: Float64Array,
+  at: number,
+): number {
+  let largest = 0
+  let spoilt = 0
+  for (let i = 0; i < n; i++) {
+    let sum = (diagonal[i]! - value) * out[at + i]!
+    if (i > 0) sum += coupling[i]! * out[at + i - 1]!
+    if (i < n - 1) sum += coupling[i + 1]! * out[at + i + 1]!
+    largest = Math.max(largest, Math.abs(sum))
+    spoilt += sum - sum
+  }
+  return spoilt === 0 ? largest : Number.NaN
 }

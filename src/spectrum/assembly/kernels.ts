@@ -126,7 +126,8 @@ export function tridiagonalise(A: usize, n: i32, ldEntries: i32, d: usize, e: us
     set(x, i - 1, 0)
     const tail = dot(x, x, i)
     let t = 0.0
-    if (tail == 0) {
+    // squares this small have lost their precision; the matrix comes scaled to largest entry about 1
+    if (tail < 1e-280) {
       set(e, i, alpha)
       memory.fill(x, 0, bytes(i))
     } else {
@@ -163,21 +164,36 @@ export function tridiagonalise(A: usize, n: i32, ldEntries: i32, d: usize, e: us
 // Kahan (Parlett, The Symmetric Eigenvalue Problem, 8.15), the two divisions of a step made independent.
 // e[i] couples i-1 and i on entry and is destroyed. Gives the number of sweeps, or -1 without convergence.
 export function eigenvalues(d: usize, e: usize, n: i32): i32 {
-  const eps = 1.1102230246251565e-16
-  const eps2 = eps * eps
-  for (let i = 1; i < n; i++) {
-    const c = at(e, i)
-    set(e, i - 1, c * c)
+  const eps = 2.220446049250313e-16
+  let norm2 = 0.0
+  for (let i = 0; i < n; i++) {
+    const c = i + 1 < n ? at(e, i + 1) : 0.0
+    const square = c * c
+    set(e, i, square)
+    norm2 = Math.max(norm2, Math.max(at(d, i) * at(d, i), square))
   }
-  set(e, n - 1, 0)
+  // a coupling of rounding size beside the norm counts as none
+  const none = eps * eps * norm2
   let sweeps = 0
   for (let l = 0; l < n; l++) {
     for (;;) {
       let m = l
-      for (; m < n - 1; m++) if (at(e, m) <= eps2 * Math.abs(at(d, m) * at(d, m + 1)) || at(e, m) < 1e-290) break
+      while (m < n - 1 && at(e, m) > none) m++
       if (m == l) break
       if (m < n - 1) set(e, m, 0)
       if (++sweeps > 40 * n) return -1
+      if (m == l + 1) {
+        // both eigenvalues of a 2 x 2 block, where sweeps may stand still at the last digit
+        const a = at(d, l)
+        const b = at(d, m)
+        const square = at(e, l)
+        const width = Math.sqrt((a - b) * (a - b) + 4 * square)
+        const far = 0.5 * (a + b + (a + b < 0 ? -width : width))
+        set(d, l, far)
+        set(d, m, far == 0 ? 0 : (Math.abs(a) > Math.abs(b) ? (a / far) * b : (b / far) * a) - square / far)
+        set(e, l, 0)
+        break
+      }
       let p = at(d, l)
       const root = Math.sqrt(at(e, l))
       let sigma = (at(d, l + 1) - p) / (2 * root)
