@@ -1,107 +1,173 @@
+import { lengthened } from './pending-steps.ts'
+
 /** Correlation at the step below this share of that at the longer step draws a warning. */
 const warnBelow = 0.7
 /** And only where the longer step shows a correlation worth the name. */
 const correlationWanted = 0.05
+/** Memory of the means, in steps. */
 const pull = 1 / 400
+/** Values that a signal's own variance must rest on, and longer steps that a comparison must. */
+const valuesWanted = 20
+
+/** Mean correlations at the clock's step and at a longer one, and the first over the second. */
+export interface EppsComparison {
+  readonly step: number
+  readonly longer: number
+  readonly ratio: number
+  /** Steps in the longer one. */
+  readonly multiple: number
+}
 
 /**
  * The Epps effect (Epps 1979): sampled faster than signals update, correlations shrink towards zero. Compares
- * the mean correlation at the clock's step with that of sums over `multiple` steps, both by the variance of
- * the equally weighted sum of scaled signals: with n unit variances it is n + n(n − 1)·ρ̄.
+ * the mean correlation at the clock's step with that of sums over `multiple` steps.
  */
 export class EppsCheck {
   readonly #multiple: number
-  #sums = new Float64Array(0)
+  readonly #short = new RunningCorrelation(pull)
+  readonly #long: RunningCorrelation
+  #sums: Float64Array = new Float64Array(0)
+  /** Steps of the present sum in which the signal was there. */
+  #parts: Float64Array = new Float64Array(0)
+  #whole: Uint8Array = new Uint8Array(0)
   #inSum = 0
-  #short = 0
-  #long = 0
-  #shortWeight = 0
-  #longWeight = 0
 
   /** `multiple`: steps in the longer one. */
   constructor(multiple = 6) {
     this.#multiple = multiple
+    this.#long = new RunningCorrelation(multiple * pull)
   }
 
-  /** A frame in units of the signals' own scales; missing entries 0. */
-  push(scaled: Float64Array): void {
-    if (this.#sums.length < scaled.length) {
-      const wider = new Float64Array(scaled.length)
-      wider.set(this.#sums)
-      this.#sums = wider
+  /** One frame's values in any unit; what is not present counts as unknown. */
+  push(x: Float64Array, present: Uint8Array): void {
+    if (this.#sums.length < x.length) {
+      this.#sums = lengthened(this.#sums, x.length, 0)
+      this.#parts = lengthened(this.#parts, x.length, 0)
+      this.#whole = new Uint8Array(x.length)
     }
-    const now = meanCorrelation(scaled)
-    if (now !== null) {
-      this.#short += pull * (now - this.#short)
-      this.#shortWeight += pull * (1 - this.#shortWeight)
+    this.#short.push(x, present)
+    for (let i = 0; i < x.length; i++) {
+      if (present[i] === 0) continue
+      this.#sums[i] = this.#sums[i]! + x[i]!
+      this.#parts[i] = this.#parts[i]! + 1
     }
-    for (let i = 0; i < scaled.length; i++) this.#sums[i] = this.#sums[i]! + scaled[i]!
     if (++this.#inSum < this.#multiple) return
-    const over = meanCorrelation(this.#sums)
-    if (over !== null) {
-      this.#long += this.#multiple * pull * (over - this.#long)
-      this.#longWeight += this.#multiple * pull * (1 - this.#longWeight)
-    }
+    for (let i = 0; i < x.length; i++) this.#whole[i] = this.#parts[i] === this.#multiple ? 1 : 0
+    this.#long.push(this.#sums, this.#whole)
+    this.interrupt()
+  }
+
+  /** A step was left out: a sum over it would be none. */
+  interrupt(): void {
     this.#sums.fill(0)
+    this.#parts.fill(0)
     this.#inSum = 0
   }
 
-  /** Mean correlation at the step and at the longer one; null while too little has been seen. */
-  get correlations(): { readonly step: number; readonly longer: number; readonly multiple: number } | null {
-    if (this.#shortWeight < 0.5 || this.#longWeight < 0.5) return null
-    return {
-      step: this.#short / this.#shortWeight,
-      longer: this.#long / this.#longWeight,
-      multiple: this.#multiple,
-    }
+  /** null while too little has been seen, or where the longer step shows no correlation to compare with. */
+  get comparison(): EppsComparison | null {
+    const step = this.#short.value
+    const longer = this.#long.value
+    if (step === null || longer === null || longer < correlationWanted) return null
+    return { step, longer, ratio: step / longer, multiple: this.#multiple }
   }
 
   /** A sentence for the user where the step is too short for the signals; null where it is not. */
   get warning(): string | null {
-    const c = this.correlations
-    if (c === null || c.longer < correlationWanted || c.step >= warnBelow * c.longer) return null
+    const c = this.comparison
+    if (c === null || c.ratio >= warnBelow) return null
     return `The clock's step is short for these signals: their mean correlation is ${c.step.toFixed(2)} at the step and ${c.longer.toFixed(2)} at ${c.multiple} steps (Epps effect). A longer step shows more.`
   }
 
   snapshot(): EppsSnapshot {
     return {
+      short: this.#short.snapshot(),
+      long: this.#long.snapshot(),
       sums: this.#sums.slice(),
+      parts: this.#parts.slice(),
       inSum: this.#inSum,
-      short: this.#short,
-      long: this.#long,
-      shortWeight: this.#shortWeight,
-      longWeight: this.#longWeight,
     }
   }
 
   restore(s: EppsSnapshot): void {
+    this.#short.restore(s.short)
+    this.#long.restore(s.long)
     this.#sums = s.sums.slice()
+    this.#parts = s.parts.slice()
+    this.#whole = new Uint8Array(s.sums.length)
     this.#inSum = s.inSum
-    this.#short = s.short
-    this.#long = s.long
-    this.#shortWeight = s.shortWeight
-    this.#longWeight = s.longWeight
   }
 }
 
 export interface EppsSnapshot {
+  readonly short: RunningCorrelationSnapshot
+  readonly long: RunningCorrelationSnapshot
   readonly sums: Float64Array
+  readonly parts: Float64Array
   readonly inSum: number
-  readonly short: number
-  readonly long: number
-  readonly shortWeight: number
-  readonly longWeight: number
 }
 
-/** Mean over pairs of x_i x_j, over the mean of x_i²: the frame's own share in the mean correlation. */
-function meanCorrelation(x: Float64Array): number | null {
-  let sum = 0
-  let square = 0
-  for (const value of x) {
-    sum += value
-    square += value * value
+/** Running mean over the pairs of signals of x_i x_j/(σ_i σ_j), σ² the running mean of x²; all about zero. */
+class RunningCorrelation {
+  readonly #pull: number
+  #square: Float64Array = new Float64Array(0)
+  #count: Float64Array = new Float64Array(0)
+  #mean = 0
+  #frames = 0
+
+  constructor(pull: number) {
+    this.#pull = pull
   }
-  const n = x.length
-  if (n < 2 || square === 0) return null
-  return (sum * sum - square) / ((n - 1) * square)
+
+  push(x: Float64Array, present: Uint8Array): void {
+    if (this.#square.length < x.length) {
+      this.#square = lengthened(this.#square, x.length, 0)
+      this.#count = lengthened(this.#count, x.length, 0)
+    }
+    let sum = 0
+    let squares = 0
+    let n = 0
+    for (let i = 0; i < x.length; i++) {
+      if (present[i] === 0) continue
+      const count = this.#count[i]! + 1
+      const square = x[i]! * x[i]!
+      this.#count[i] = count
+      this.#square[i] = this.#square[i]! + Math.max(this.#pull, 1 / count) * (square - this.#square[i]!)
+      if (count < valuesWanted || !(this.#square[i]! > 0)) continue
+      sum += x[i]! / Math.sqrt(this.#square[i]!)
+      squares += square / this.#square[i]!
+      n++
+    }
+    if (n < 2) return
+    const frames = ++this.#frames
+    const now = (sum * sum - squares) / (n * (n - 1))
+    this.#mean += Math.max(this.#pull, 1 / frames) * (now - this.#mean)
+  }
+
+  get value(): number | null {
+    return this.#frames < valuesWanted ? null : this.#mean
+  }
+
+  snapshot(): RunningCorrelationSnapshot {
+    return {
+      square: this.#square.slice(),
+      count: this.#count.slice(),
+      mean: this.#mean,
+      frames: this.#frames,
+    }
+  }
+
+  restore(s: RunningCorrelationSnapshot): void {
+    this.#square = s.square.slice()
+    this.#count = s.count.slice()
+    this.#mean = s.mean
+    this.#frames = s.frames
+  }
+}
+
+export interface RunningCorrelationSnapshot {
+  readonly square: Float64Array
+  readonly count: Float64Array
+  readonly mean: number
+  readonly frames: number
 }

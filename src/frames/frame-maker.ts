@@ -10,105 +10,58 @@ import {
   takenOutOfOrder,
   tooFarAhead,
 } from './aligner.ts'
-import { EppsCheck, type EppsSnapshot } from './epps.ts'
-import type { Finding, Frame } from './frame.ts'
+import type { EppsComparison } from './epps.ts'
+import type { Frame } from './frame.ts'
+import { FrameBuilder, type FrameBuilderSnapshot } from './frame-builder.ts'
+import type { Columns, FrameOptions, Made } from './frame-options.ts'
 import { Hygiene, type HygieneSnapshot, type SignalCondition } from './hygiene.ts'
-import { type Increment, type IncrementSnapshot, IncrementTaker } from './increments.ts'
-import { Memory, type MemoryChoice, type MemorySnapshot } from './memory.ts'
-import { overLimit, Roster, type RosterSnapshot, type SignalChoice, unwatched } from './roster.ts'
-import { Scaler, type ScalerSnapshot } from './scaler.ts'
-import { type SessionChoice, Sessions } from './sessions.ts'
+import { overLimit, Roster, type RosterSnapshot, unwatched } from './roster.ts'
+import { Sessions } from './sessions.ts'
 import { type WatermarkSnapshot, Watermarks } from './watermarks.ts'
 
-export interface FrameOptions {
-  readonly signals: SignalChoice
-  /** Milliseconds, or `row`. */
-  readonly step: number | 'row'
-  /** Milliseconds that a step stays open for readings that come late. */
-  readonly lateness: number
-  /** Milliseconds; null: 12 steps, with `row` the row itself. */
-  readonly staleAfter: number | null
-  /** Milliseconds of processing time. */
-  readonly idleAfter: number
-  /** Milliseconds that a reading may lie ahead of the present. */
-  readonly ahead: number
-  readonly sessions: SessionChoice | null
-  readonly increment: Increment
-  /** Steps of the exponential mean that `level` is taken from. */
-  readonly levelSpan: number
-  readonly memory: MemoryChoice
-  /** Steps that an autoregression is fitted to. */
-  readonly fitOver: number
-  readonly commonVolatility: 'remove' | 'keep'
-  /** Robust standard deviations; null: no truncation. */
-  readonly truncateAt: number | null
-  /** Frames that a signal's own scale rests on. */
-  readonly scaleSpan: number
-  /** Frames after which scales are fixed; null: they follow. */
-  readonly scaleFixedAfter: number | null
-  readonly stuckAfter: number | null
-}
+export type { Columns, FrameOptions, Made } from './frame-options.ts'
 
-/** Readings as columns: see feeds/feed.ts. */
-export interface Columns {
-  readonly count: number
-  readonly names: readonly string[]
-  readonly signal: Int32Array
-  readonly time: Float64Array
-  readonly value: Float64Array
-}
-
-export interface Made {
-  readonly frames: Frame[]
-  readonly findings: readonly Finding[]
-  readonly dropped: DropCounts
-}
-
-/** Entries of waiting steps that are kept at most, over all signals. */
-const mostPendingEntries = 4_000_000
+/** Event times outside of the years 1900 to 2200 are no event times. Milliseconds since 1970 UTC. */
+const earliestTime = Date.UTC(1900, 0, 1)
+const latestTime = Date.UTC(2201, 0, 1) - 1
+/** Places in steps that wait, over all of them: 16 bytes each. And steps that wait, however few their places. */
+const mostPendingEntries = 16_000_000
 const mostPendingSteps = 100_000
+/** Steps after which a value is missing, where no age is set. */
+const freshSteps = 12
+/** A name of a feed that was not looked at yet. */
+const unknown = -3
 
-/** Readings of one ensemble become its frames: alignment, increments, hygiene, memory, scale, truncation. */
+/**
+ * Readings of one ensemble become its frames. Steps close as the watermark of all sources passes their ends;
+ * no call reads a clock: `now`, milliseconds since 1970 UTC, is the present of the caller.
+ */
 export class FrameMaker {
   readonly #options: FrameOptions
   readonly #roster: Roster
   readonly #watermarks: Watermarks
   readonly #aligner: Aligner
-  readonly #increments: IncrementTaker
   readonly #hygiene: Hygiene
-  readonly #memory: Memory
-  readonly #scaler: Scaler
-  readonly #epps = new EppsCheck()
-  /** For each list of names a feed shows: the places of its signals. */
-  readonly #places = new WeakMap<readonly string[], number[]>()
-  #arrivals: Float64Array = new Float64Array(0)
+  readonly #builder: FrameBuilder
+  /** For each list of names a feed shows: the places of its signals by the feed's number. */
+  #places = new WeakMap<readonly string[], Int32Array>()
   #frames: Frame[] = []
-  #next = 0
   #lastEnd = Number.NaN
 
   constructor(options: FrameOptions) {
     this.#options = options
+    const { step } = options
+    const staleAfter = options.staleAfter ?? (step === 'row' ? null : freshSteps * step)
     this.#roster = new Roster(options.signals)
     this.#watermarks = new Watermarks(options.idleAfter)
-    const expected = 'names' in options.signals ? options.signals.names.length : options.signals.limit
+    const sessions = options.sessions === null ? null : new Sessions(options.sessions)
     this.#aligner = new Aligner(
-      {
-        step: options.step,
-        staleAfter: options.staleAfter,
-        sessions: options.sessions === null ? null : new Sessions(options.sessions),
-        mostPending: Math.max(64, Math.min(mostPendingSteps, Math.floor(mostPendingEntries / expected))),
-      },
+      { step, staleAfter, sessions, mostPendingSteps, mostPendingEntries },
       this.#roster,
     )
-    this.#increments = new IncrementTaker(options.increment, options.levelSpan)
-    this.#hygiene = new Hygiene(options, (place) => this.#roster.nameOf(place))
-    this.#memory = new Memory(options.memory, options.fitOver)
-    this.#scaler = new Scaler({
-      span: options.scaleSpan,
-      fixedAfter: options.scaleFixedAfter,
-      commonVolatility: options.commonVolatility,
-      truncateAt: options.truncateAt,
-    })
+    this.#hygiene = new Hygiene({ ...options, staleAfter }, (place) => this.#roster.nameOf(place))
+    this.#hygiene.reserve(this.#roster.places)
+    this.#builder = new FrameBuilder(options, this.#roster, this.#hygiene)
   }
 
   /** Names of the signals by index in frames. */
@@ -122,7 +75,7 @@ export class FrameMaker {
 
   /** T_eff/T: what the signals' own memory leaves of a window. */
   get effectiveShare(): number {
-    return this.#memory.effectiveShare
+    return this.#builder.effectiveShare
   }
 
   get conditions(): Readonly<Record<SignalCondition, number>> {
@@ -131,52 +84,67 @@ export class FrameMaker {
 
   /** Steps that wait for the watermark. */
   get pending(): number {
-    return this.#aligner.pending
+    return this.#aligner.pendingSteps
+  }
+
+  /** Readings that wait in them; counted when asked for. */
+  get pendingReadings(): number {
+    return this.#aligner.pendingReadings
+  }
+
+  /** Mean correlation at the step against that at a longer one; null while unknown. */
+  get stepComparison(): EppsComparison | null {
+    return this.#builder.comparison
   }
 
   /** A warning that the step is too short for the signals, or null. */
   get stepWarning(): string | null {
-    return this.#epps.warning
+    return this.#builder.warning
   }
 
-  /** Takes readings of one source in their order; `now` is the present by the clock of processing. */
+  /** Takes readings of one source in their order. */
   take(source: string, columns: Columns, now: number): Made {
-    const { lateness, ahead, increment } = this.#options
-    const { count, signal, time, value } = columns
+    const { lateness, increment } = this.#options
+    const { count, names, signal, time, value } = columns
     const from = this.#watermarks.source(source, now)
     from.spoke = now
-    const places = this.#placesOf(columns.names)
-    const latest = now + ahead
-    const drops = new Drops()
+    from.ended = false
+    const others = this.#watermarks.reachedByOthers(from, now)
+    const latest = Math.min(latestTime, now + this.#options.ahead)
     const log = increment === 'log-return'
+    const drops = new Drops()
+    let places = this.#placesOf(names)
     for (let r = 0; r < count; r++) {
       const id = signal[r]!
-      let place = places[id]
-      if (place === undefined) place = this.#place(places, id, columns.names[id]!)
+      if (id >= places.length) places = this.#widened(names)
+      let place = places[id]!
+      if (place === unknown) place = this.#place(places, id, names[id]!)
       const t = time[r]!
-      if (t > latest) {
-        if (place !== unwatched) drops.add('ahead')
+      if (!(t >= earliestTime && t <= latest)) {
+        if (place !== unwatched) drops.add(t > latest && t <= latestTime ? 'ahead' : 'bad-time')
         continue
       }
       if (place >= 0) {
-        if (log && !(value[r]! > 0)) drops.add('not-positive')
+        const v = value[r]!
+        this.#hygiene.arrived(place)
+        if (!Number.isFinite(v)) drops.add('bad-value')
+        else if (log && v <= 0) drops.add('not-positive')
         else {
-          const fate = this.#aligner.push(place, t, value[r]!)
-          this.#arrivals[place]!++
+          const fate = this.#aligner.push(place, t, v)
           if (fate !== 0) this.#note(fate, place, drops)
         }
       } else if (place === overLimit) drops.add('too-many-signals')
       if (t > from.latest) {
         from.latest = t
-        if (t - lateness >= this.#aligner.due) this.#close(now)
+        this.#reach(Math.min(t, others) - lateness)
       }
     }
-    return this.#made(drops.counts)
+    return this.beat(now, drops.counts)
   }
 
   /** Sources that now belong to the ensemble's feeds; each holds the clock until it has spoken. */
   assign(sources: readonly string[], now: number): Made {
-    for (const source of sources) this.#watermarks.source(source, now)
+    for (const source of sources) this.#watermarks.assign(source, now)
     return this.#made({})
   }
 
@@ -195,86 +163,57 @@ export class FrameMaker {
     return this.beat(now)
   }
 
-  /** Lets sources fall idle. */
-  beat(now: number): Made {
-    this.#close(now)
+  /** Lets time pass: sources may fall idle. `dropped` is handed on. */
+  beat(now: number, dropped: DropCounts = {}): Made {
+    const reached = this.#watermarks.reached(now)
+    if (reached < Number.POSITIVE_INFINITY) this.#reach(reached - this.#options.lateness)
+    else this.#closeAll()
+    return this.#made(dropped)
+  }
+
+  /** Closes all that waits, as though every source had ended. */
+  flush(): Made {
+    this.#closeAll()
     return this.#made({})
   }
 
-  /** Sources and the steps by which each runs ahead of the slowest one. */
+  /** Sources, and how many of the waiting steps each has gone ahead of what holds the clock. */
   *leads(now: number): Generator<readonly [source: string, steps: number]> {
-    const { step } = this.#options
-    const perStep = step === 'row' ? Number.POSITIVE_INFINITY : step
-    for (const [source, lead] of this.#watermarks.leads(now)) yield [source, lead / perStep]
+    const floor = Math.max(this.#watermarks.reached(now), this.#aligner.pendingSince)
+    for (const [source, latest] of this.#watermarks.living())
+      yield [source, latest > floor ? this.#aligner.pendingWithin(floor, latest) : 0]
   }
 
   #note(fate: Fate, place: number, drops: Drops): void {
     if (fate === takenOutOfOrder) this.#hygiene.outOfOrder(place)
-    else if (fate === repeated) {
+    else if (fate === late) {
+      this.#hygiene.outOfOrder(place)
+      drops.add('late')
+    } else if (fate === repeated) {
       this.#hygiene.duplicate(place)
       drops.add('duplicate')
-    } else if (fate === late) drops.add('late')
-    else if (fate === outsideSessions) drops.add('closed')
+    } else if (fate === outsideSessions) drops.add('closed')
     else if (fate === tooFarAhead) drops.add('ahead')
   }
 
-  #close(now: number): void {
-    this.#aligner.close(this.#watermarks.reached(now) - this.#options.lateness, this.#closeStep)
+  #reach(watermark: number): void {
+    this.#aligner.reach(watermark, this.#closeStep)
+  }
+
+  /** Steps as far as the furthest source came, and then the waiting ones: not dependent on who ended last. */
+  #closeAll(): void {
+    this.#reach(this.#watermarks.furthest - this.#options.lateness)
+    this.#aligner.flush(this.#closeStep)
   }
 
   #closeStep = (levels: Levels): void => {
-    const { time, places } = levels
-    if (levels.afresh && !Number.isNaN(this.#lastEnd) && this.#options.sessions === null) {
-      const { step } = this.#options
-      if (step !== 'row') this.#hygiene.gap(this.#lastEnd, time - step)
-    }
-    this.#lastEnd = time
-    this.#hygiene.levels(levels, this.#arrivals)
-    this.#arrivals.fill(0)
-    const increments = this.#increments.take(levels, this.#hygiene.withheld)
-    const fresh: number[] = []
-    for (let place = 0; place < places; place++) {
-      if (increments.has[place] === 1 && this.#roster.index(place) < 0) fresh.push(place)
-    }
-    if (fresh.length > 0) this.#roster.enrol(fresh)
-    if (!increments.any) return
-    const n = this.#roster.names.length
-    const x = new Float64Array(n)
-    const present = new Uint8Array(n)
-    const placeOf = new Int32Array(n)
-    for (let place = 0; place < places; place++) {
-      const index = this.#roster.index(place)
-      if (index < 0) continue
-      placeOf[index] = place
-      if (increments.has[place] === 0 || !Number.isFinite(increments.value[place]!)) continue
-      x[index] = increments.value[place]!
-      present[index] = 1
-    }
-    const raw = this.#memory.remembers ? x.slice() : x
-    this.#memory.apply(x, present)
-    const scaled = this.#scaler.scale(x, present)
-    if (scaled === null) return
-    const missing = n - scaled.present.reduce((sum, has) => sum + has, 0)
-    if (missing === n) return
-    if (!this.#scaler.plain) this.#epps.push(scaled.scaled)
-    const presentPlaces: number[] = []
-    for (let i = 0; i < n; i++) if (scaled.present[i] === 1) presentPlaces.push(placeOf[i]!)
-    this.#hygiene.clipped(
-      scaled.clippedSignals.map((i) => placeOf[i]!),
-      presentPlaces,
-      time,
-    )
-    this.#frames.push({
-      index: this.#next++,
-      time,
-      present: scaled.present,
-      missing,
-      increments: raw,
-      scaled: scaled.scaled,
-      cleaned: scaled.cleaned,
-      clipped: scaled.clipped,
-      volatility: scaled.volatility,
-    })
+    const { step } = this.#options
+    if (levels.follows === 'after-silence' && step !== 'row')
+      this.#hygiene.gap(this.#lastEnd, levels.time - step)
+    this.#lastEnd = levels.time
+    this.#hygiene.levels(levels)
+    const frame = this.#builder.build(levels)
+    if (frame !== null) this.#frames.push(frame)
   }
 
   #made(dropped: DropCounts): Made {
@@ -283,22 +222,22 @@ export class FrameMaker {
     return { frames, findings: this.#hygiene.news(), dropped }
   }
 
-  #placesOf(names: readonly string[]): number[] {
-    const known = this.#places.get(names)
-    if (known !== undefined) return known
-    const places: number[] = []
-    this.#places.set(names, places)
-    return places
+  #placesOf(names: readonly string[]): Int32Array {
+    return this.#places.get(names) ?? this.#widened(names)
   }
 
-  #place(places: number[], id: number, name: string): number {
+  #widened(names: readonly string[]): Int32Array {
+    const known = this.#places.get(names)
+    const wider = new Int32Array(Math.max(16, 2 * names.length)).fill(unknown)
+    if (known !== undefined) wider.set(known)
+    this.#places.set(names, wider)
+    return wider
+  }
+
+  #place(places: Int32Array, id: number, name: string): number {
     const place = this.#roster.place(name)
     places[id] = place
-    if (place >= this.#arrivals.length) {
-      const wider = new Float64Array(Math.max(16, 2 * place + 1, this.#roster.places))
-      wider.set(this.#arrivals)
-      this.#arrivals = wider
-    }
+    this.#hygiene.reserve(this.#roster.places)
     return place
   }
 
@@ -307,29 +246,20 @@ export class FrameMaker {
       roster: this.#roster.snapshot(),
       watermarks: this.#watermarks.snapshot(),
       aligner: this.#aligner.snapshot(),
-      increments: this.#increments.snapshot(),
       hygiene: this.#hygiene.snapshot(),
-      memory: this.#memory.snapshot(),
-      scaler: this.#scaler.snapshot(),
-      epps: this.#epps.snapshot(),
-      arrivals: this.#arrivals.slice(),
-      next: this.#next,
+      builder: this.#builder.snapshot(),
       lastEnd: this.#lastEnd,
     }
   }
 
   restore(snapshot: unknown): void {
     const s = snapshot as FrameMakerSnapshot
+    this.#places = new WeakMap()
     this.#roster.restore(s.roster)
     this.#watermarks.restore(s.watermarks)
     this.#aligner.restore(s.aligner)
-    this.#increments.restore(s.increments)
     this.#hygiene.restore(s.hygiene)
-    this.#memory.restore(s.memory)
-    this.#scaler.restore(s.scaler)
-    this.#epps.restore(s.epps)
-    this.#arrivals = s.arrivals.slice()
-    this.#next = s.next
+    this.#builder.restore(s.builder)
     this.#lastEnd = s.lastEnd
   }
 }
@@ -338,13 +268,8 @@ export interface FrameMakerSnapshot {
   readonly roster: RosterSnapshot
   readonly watermarks: WatermarkSnapshot
   readonly aligner: AlignerSnapshot
-  readonly increments: IncrementSnapshot
   readonly hygiene: HygieneSnapshot
-  readonly memory: MemorySnapshot
-  readonly scaler: ScalerSnapshot
-  readonly epps: EppsSnapshot
-  readonly arrivals: Float64Array
-  readonly next: number
+  readonly builder: FrameBuilderSnapshot
   readonly lastEnd: number
 }
 

@@ -1,8 +1,11 @@
 import type { Levels } from './aligner.ts'
 
+/** Levels and increments beyond this are no quantities but faults: their squares and sums must stay finite. */
+export const largest = 1e100
+
 export type Increment = 'log-return' | 'difference' | 'level'
 
-/** Increments of one step by place; `has[i]` is 0 where there is none. Borrowed until the next call. */
+/** Increments of one step by place, finite; `has[i]` is 0 where there is none. Borrowed until the next call. */
 export interface Increments {
   readonly value: Float64Array
   readonly has: Uint8Array
@@ -11,8 +14,8 @@ export interface Increments {
 
 /**
  * Increments between two steps that follow on each other: ln(l/l₋₁), l − l₋₁, or the level less its own
- * exponential mean before this step. A signal has one only where both levels are fresh and it was not
- * withheld (a stuck transmitter) in either step.
+ * exponential mean before this step. A signal has one only where both levels are fresh, and it was not
+ * withheld (a stuck transmitter) in either step. After a silence, or in another session, there is none.
  */
 export class IncrementTaker {
   readonly #kind: Increment
@@ -24,7 +27,10 @@ export class IncrementTaker {
   #value: Float64Array = new Float64Array(0)
   #has: Uint8Array = new Uint8Array(0)
 
-  /** `span` in steps: the exponential mean of `level` weighs as a mean over so many, 2/(span + 1) a step. */
+  /**
+   * `span` in steps: the exponential mean of `level` pulls by 2/(span + 1) a step, so that its weights have
+   * the same centre of mass as a plain mean over `span` steps (Roberts 1959); a time constant of span/2 steps.
+   */
   constructor(kind: Increment, span: number) {
     this.#kind = kind
     this.#pull = 2 / (span + 1)
@@ -32,33 +38,36 @@ export class IncrementTaker {
 
   /** `withheld[i]` is 1 where the signal's value must not be used in this step. */
   take(levels: Levels, withheld: Uint8Array): Increments {
-    const { places, afresh } = levels
+    const { places, follows, fresh, value } = levels
     this.#reserve(places)
+    const direct = follows === 'directly'
+    const log = this.#kind === 'log-return'
     let any = false
     for (let i = 0; i < places; i++) {
-      const usable = levels.fresh[i] === 1 && withheld[i] === 0
-      const followsOn = usable && this.#had[i] === 1 && !afresh
-      this.#has[i] = followsOn ? 1 : 0
+      const had = this.#had[i] === 1 && direct
+      this.#has[i] = 0
       this.#value[i] = 0
-      this.#had[i] = usable ? 1 : 0
-      if (!usable) continue
-      const level = this.#kind === 'log-return' ? Math.log(levels.value[i]!) : levels.value[i]!
-      if (this.#kind === 'level') this.#fromMean(i, level, followsOn)
-      else {
-        if (followsOn) this.#value[i] = level - this.#before[i]!
-        this.#before[i] = level
+      this.#had[i] = 0
+      if (fresh[i] === 0 || withheld[i] === 1) continue
+      const level = log ? Math.log(value[i]!) : value[i]!
+      if (!(Math.abs(level) <= largest)) continue
+      this.#had[i] = 1
+      if (had) {
+        this.#value[i] = level - (this.#kind === 'level' ? this.#mean[i]! : this.#before[i]!)
+        this.#has[i] = 1
+        any = true
       }
-      if (followsOn) any = true
+      this.#before[i] = level
+      if (this.#kind === 'level') this.#follow(i, level)
     }
     return { value: this.#value, has: this.#has, any }
   }
 
-  #fromMean(i: number, level: number, followsOn: boolean): void {
+  /** The exponential mean; over its first steps the plain one. */
+  #follow(i: number, level: number): void {
     const count = this.#count[i]! + 1
     this.#count[i] = count
-    if (followsOn) this.#value[i] = level - this.#mean[i]!
-    const pull = Math.max(this.#pull, 1 / count)
-    this.#mean[i] = this.#mean[i]! + pull * (level - this.#mean[i]!)
+    this.#mean[i] = this.#mean[i]! + Math.max(this.#pull, 1 / count) * (level - this.#mean[i]!)
   }
 
   #reserve(places: number): void {

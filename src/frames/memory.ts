@@ -1,30 +1,28 @@
 import { type Autoregression, fitAutoregression, mostLags } from './autoregression.ts'
+import { EffectiveShare, type EffectiveShareSnapshot } from './effective-share.ts'
 
 export type MemoryChoice = 'none' | 'prewhiten' | 'effective-sample'
 
-/** One signal's own history. */
+/** One signal's own history under `prewhiten`. */
 interface History {
   /** The values that the fit is made of, NaN where missing; null once it is made. */
   learning: number[] | null
   model: Autoregression | null
-  /** The last values, newest first; NaN where missing. */
-  last: number[]
-  /** Exponential means of x_t x_{t−1} and x_t², for the effective sample size. */
-  lagged: number
-  square: number
 }
-
-const pullOfEffective = 1 / 250
 
 /**
  * What to do about signals that remember: `prewhiten` passes the residuals of an autoregression fitted to
  * each signal's first `fitOver` steps (till then it is missing); `effective-sample` passes values as they are
- * and says by how much fewer independent frames they are worth; `none` does neither.
+ * and says by how much fewer independent frames they are worth; `none` does neither. A residual needs all the
+ * values before it that the model looks back on: next to a missing one it is missing too.
  */
 export class Memory {
   readonly #choice: MemoryChoice
   readonly #fitOver: number
   #histories: History[] = []
+  /** The last values by signal, newest first, `mostLags` each; NaN where missing. */
+  #last: Float64Array = new Float64Array(0)
+  readonly #share = new EffectiveShare()
 
   constructor(choice: MemoryChoice, fitOver: number) {
     this.#choice = choice
@@ -36,73 +34,88 @@ export class Memory {
     return this.#choice === 'prewhiten'
   }
 
+  /** T_eff/T for the signals as they are; 1 unless `effective-sample` is chosen. */
+  get effectiveShare(): number {
+    return this.#choice === 'effective-sample' ? this.#share.value : 1
+  }
+
   /** `x` and `present` by roster index, changed in place: residuals, and 0 with `present` 0 where there is none. */
   apply(x: Float64Array, present: Uint8Array): void {
-    if (this.#choice === 'none') return
-    while (this.#histories.length < x.length) {
-      this.#histories.push({ learning: [], model: null, last: [], lagged: 0, square: 0 })
-    }
+    if (this.#choice === 'effective-sample') this.#share.push(x, present)
+    if (this.#choice !== 'prewhiten') return
+    this.#reserve(x.length)
     for (let i = 0; i < x.length; i++) {
-      const history = this.#histories[i]!
       const value = present[i] === 1 ? x[i]! : Number.NaN
-      if (this.#choice === 'effective-sample') follow(history, value)
-      else {
-        const residual = this.#whiten(history, value)
-        present[i] = Number.isNaN(residual) ? 0 : 1
-        x[i] = Number.isNaN(residual) ? 0 : residual
-      }
-      history.last.unshift(value)
-      if (history.last.length > mostLags) history.last.pop()
+      const residual = this.#whiten(i, value)
+      this.#remember(i, value)
+      present[i] = Number.isNaN(residual) ? 0 : 1
+      x[i] = Number.isNaN(residual) ? 0 : residual
     }
   }
 
-  /**
-   * T_eff/T for the signals as they are: (1 − r²)/(1 + r²), r their mean lag-1 autocorrelation (Bartlett
-   * 1935); 1 unless `effective-sample` is chosen.
-   */
-  get effectiveShare(): number {
-    if (this.#choice !== 'effective-sample') return 1
-    let sum = 0
-    let count = 0
-    for (const { lagged, square } of this.#histories) {
-      if (!(square > 0)) continue
-      sum += lagged / square
-      count++
+  /** A step without any increment lay between: what follows does not continue what was before. */
+  interrupt(): void {
+    this.#share.interrupt()
+    for (const [i, { learning }] of this.#histories.entries()) {
+      if (learning !== null && learning.length > 0) this.#learn(i, Number.NaN)
+      this.#remember(i, Number.NaN)
     }
-    const r = count > 0 ? Math.min(0.999, Math.max(0, sum / count)) : 0
-    return (1 - r * r) / (1 + r * r)
   }
 
-  #whiten(history: History, value: number): number {
-    if (history.learning !== null) {
-      if (history.learning.length > 0 || !Number.isNaN(value)) history.learning.push(value)
-      if (history.learning.length < this.#fitOver) return Number.NaN
-      history.model = fitAutoregression(Float64Array.from(history.learning))
-      history.learning = null
+  #whiten(i: number, value: number): number {
+    const { model } = this.#histories[i]!
+    if (model === null) {
+      this.#learn(i, value)
       return Number.NaN
     }
-    const { mean, weights } = history.model!
+    const { mean, weights } = model
     let residual = value - mean
-    for (const [k, weight] of weights.entries()) residual -= weight * ((history.last[k] ?? Number.NaN) - mean)
+    for (let k = 0; k < weights.length; k++) residual -= weights[k]! * (this.#last[i * mostLags + k]! - mean)
     return residual
   }
 
+  /** Steps count from the signal's first value, so that signals that begin together are fitted together. */
+  #learn(i: number, value: number): void {
+    const history = this.#histories[i]!
+    const learning = history.learning!
+    if (learning.length === 0 && Number.isNaN(value)) return
+    learning.push(value)
+    if (learning.length < this.#fitOver) return
+    history.model = fitAutoregression(Float64Array.from(learning))
+    history.learning = null
+  }
+
+  #remember(i: number, value: number): void {
+    const start = i * mostLags
+    this.#last.copyWithin(start + 1, start, start + mostLags - 1)
+    this.#last[start] = value
+  }
+
+  #reserve(signals: number): void {
+    if (this.#histories.length >= signals) return
+    while (this.#histories.length < signals) this.#histories.push({ learning: [], model: null })
+    const longer = new Float64Array(signals * mostLags).fill(Number.NaN)
+    longer.set(this.#last)
+    this.#last = longer
+  }
+
   snapshot(): MemorySnapshot {
-    return { histories: structuredClone(this.#histories) }
+    return {
+      histories: structuredClone(this.#histories),
+      last: this.#last.slice(),
+      share: this.#share.snapshot(),
+    }
   }
 
-  restore({ histories }: MemorySnapshot): void {
+  restore({ histories, last, share }: MemorySnapshot): void {
     this.#histories = structuredClone(histories) as History[]
+    this.#last = last.slice()
+    this.#share.restore(share)
   }
-}
-
-function follow(history: History, value: number): void {
-  const before = history.last[0]
-  if (before === undefined || Number.isNaN(value) || Number.isNaN(before)) return
-  history.lagged += pullOfEffective * (value * before - history.lagged)
-  history.square += pullOfEffective * (value * value - history.square)
 }
 
 export interface MemorySnapshot {
   readonly histories: readonly Readonly<History>[]
+  readonly last: Float64Array
+  readonly share: EffectiveShareSnapshot
 }

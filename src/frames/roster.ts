@@ -21,11 +21,11 @@ export class Roster {
   #placeNames: string[] = []
   #placeOf = new Map<string, number>()
   #indexOf: number[] = []
+  #placeAt: number[] = []
 
   constructor(choice: SignalChoice) {
     this.#choice = choice
-    if ('names' in choice)
-      for (const name of choice.names) this.#indexOf[this.#newPlace(name)] = this.names.push(name) - 1
+    if ('names' in choice) for (const name of new Set(choice.names)) this.#number(this.#newPlace(name))
   }
 
   get places(): number {
@@ -51,30 +51,42 @@ export class Roster {
 
   /** Index in frames of the signal at this place, or -1 while no frame has held it. */
   index(place: number): number {
-    return this.#indexOf[place] ?? -1
+    return this.#indexOf[place]!
+  }
+
+  /** Place of the signal with this index. */
+  placeAt(index: number): number {
+    return this.#placeAt[index]!
   }
 
   /** Numbers signals that a frame holds for the first time, in the order of their names. */
   enrol(places: readonly number[]): void {
     const byName = [...places].sort((a, b) => (this.nameOf(a) < this.nameOf(b) ? -1 : 1))
-    for (const place of byName) this.#indexOf[place] = this.names.push(this.nameOf(place)) - 1
+    for (const place of byName) this.#number(place)
   }
 
   snapshot(): RosterSnapshot {
-    return { placeNames: [...this.#placeNames], indexOf: [...this.#indexOf].map((index) => index ?? -1) }
+    return { placeNames: [...this.#placeNames], placeAt: [...this.#placeAt] }
   }
 
-  restore({ placeNames, indexOf }: RosterSnapshot): void {
+  restore({ placeNames, placeAt }: RosterSnapshot): void {
     this.#placeNames = []
     this.#placeOf = new Map()
+    this.#indexOf = []
+    this.#placeAt = []
     this.names.length = 0
     for (const name of placeNames) this.#newPlace(name)
-    this.#indexOf = [...indexOf]
-    for (const [place, index] of indexOf.entries()) if (index >= 0) this.names[index] = placeNames[place]!
+    for (const place of placeAt) this.#number(place)
+  }
+
+  #number(place: number): void {
+    this.#indexOf[place] = this.names.push(this.nameOf(place)) - 1
+    this.#placeAt.push(place)
   }
 
   #newPlace(name: string): number {
     const place = this.#placeNames.push(name) - 1
+    this.#indexOf[place] = -1
     this.#placeOf.set(name, place)
     return place
   }
@@ -82,5 +94,5 @@ export class Roster {
 
 export interface RosterSnapshot {
   readonly placeNames: readonly string[]
-  readonly indexOf: readonly number[]
+  readonly placeAt: readonly number[]
 }

@@ -1,3 +1,4 @@
+import { largest } from './increments.ts'
 import { medianOf, SlidingMedian, type SlidingMedianSnapshot } from './sliding-median.ts'
 
 /** Median of |x| times this is the standard deviation of a normal x: 1/Φ⁻¹(3/4). */
@@ -30,7 +31,8 @@ export interface Scaled {
  * clipped, or the loud hours are clipped hardest. A signal's own scale is the trailing median of its |x|
  * (its root mean square where more than half of the entries are 0); the common volatility of a frame is the
  * median over its signals of |x|/scale (Tyler 1987's spatial sign with a robust norm). A signal without a
- * scale, too young or not moving at all, is missing. With nothing to remove and nothing to truncate, values
+ * scale, too young or not moving at all, is missing; so is an entry whose quotient is out of all bounds. With
+ * nothing to remove and nothing to truncate, values
  * pass as they are.
  */
 export class Scaler {
@@ -77,14 +79,21 @@ export class Scaler {
       const scale = this.#scaleOf(i)
       this.#learn(i, x[i]!)
       const z = x[i]! / scale
-      if (!(scale > 0) || !Number.isFinite(z)) continue
+      if (!(scale > 0) || !(Math.abs(z) <= largest)) continue
       has[i] = 1
       scaled[i] = z
       this.#scratch[count++] = Math.abs(z)
     }
     if (count === 0) return null
     const volatility = this.#options.commonVolatility === 'remove' ? this.#volatility(count) : 1
-    if (volatility !== 1) for (let i = 0; i < n; i++) scaled[i] = scaled[i]! / volatility
+    if (volatility !== 1) {
+      for (let i = 0; i < n; i++) {
+        const z = scaled[i]! / volatility
+        const bounded = Math.abs(z) <= largest
+        scaled[i] = bounded ? z : 0
+        if (!bounded) has[i] = 0
+      }
+    }
     return { present: has, scaled, volatility, ...this.#truncate(scaled) }
   }
 

@@ -14,6 +14,16 @@ export interface SessionChoice {
   readonly holidays: readonly string[]
 }
 
+/** A stretch of time [from, until) in one session, named by its opening instant, or in none: NaN. */
+interface Interval {
+  readonly from: number
+  readonly until: number
+  readonly session: number
+}
+
+/** Days whose sessions are remembered. */
+const mostSpans = 64
+
 /**
  * Trading sessions of a market by its local clock, as instants: daylight saving is in the time zone's own
  * rules (Intl). A local time that a change-over skips counts as the first instant after the gap; one that it
@@ -25,9 +35,10 @@ export class Sessions {
   readonly #days: ReadonlySet<number>
   readonly #holidays: ReadonlySet<string>
   readonly #format: Intl.DateTimeFormat
-  #from = 0
-  #until = 0
-  #session = -1
+  /** Opening and closing instants by local day, or null where no session opens. */
+  readonly #spans = new Map<number, readonly [opens: number, closes: number] | null>()
+  #now: Interval = { from: 0, until: 0, session: Number.NaN }
+  #before: Interval = { from: 0, until: 0, session: Number.NaN }
 
   /** @throws RangeError on an unknown time zone, time or day */
   constructor({ zone, open, close, days, holidays }: SessionChoice) {
@@ -47,33 +58,51 @@ export class Sessions {
     this.#holidays = new Set(holidays)
   }
 
-  /** Opening instant of the session that `time` lies in, or -1 while the market is closed. */
+  /** Opening instant of the session that `time` lies in, or NaN while the market is closed. */
   at(time: number): number {
-    if (time < this.#from || time >= this.#until) this.#locate(time)
-    return this.#session
+    return this.#interval(time).session
   }
 
-  #locate(time: number): void {
-    const local = this.#local(time)
-    const today = Math.floor(local / dayMs) * dayMs
-    this.#from = Number.NEGATIVE_INFINITY
-    this.#until = Number.POSITIVE_INFINITY
-    this.#session = -1
+  /** Does the whole span [from, until) lie in one session? */
+  covers(from: number, until: number): boolean {
+    const interval = this.#interval(from)
+    return !Number.isNaN(interval.session) && interval.until >= until
+  }
+
+  #interval(time: number): Interval {
+    if (time >= this.#now.from && time < this.#now.until) return this.#now
+    const before = this.#before
+    this.#before = this.#now
+    this.#now = time >= before.from && time < before.until ? before : this.#locate(time)
+    return this.#now
+  }
+
+  /** The session around `time`; or as much of the closed time around it as the days near by tell of. */
+  #locate(time: number): Interval {
+    const today = Math.floor(this.#local(time) / dayMs) * dayMs
+    let from = time - dayMs / 2
+    let until = time + dayMs / 2
     for (let day = today - 2 * dayMs; day <= today + 2 * dayMs; day += dayMs) {
-      if (!this.#opensOn(day)) continue
-      const opens = this.#instant(day + this.#open)
-      const closes = this.#instant(day + this.#close + (this.#close <= this.#open ? dayMs : 0))
-      if (time >= opens && time < closes) {
-        this.#from = opens
-        this.#until = closes
-        this.#session = opens
-        return
-      }
-      if (closes <= time) this.#from = Math.max(this.#from, closes)
-      if (opens > time) this.#until = Math.min(this.#until, opens)
+      const span = this.#span(day)
+      if (span === null) continue
+      const [opens, closes] = span
+      if (time >= opens && time < closes) return { from: opens, until: closes, session: opens }
+      if (closes <= time) from = Math.max(from, closes)
+      if (opens > time) until = Math.min(until, opens)
     }
-    this.#from = Math.max(this.#from, time - hourMs)
-    this.#until = Math.min(this.#until, time + hourMs)
+    return { from, until, session: Number.NaN }
+  }
+
+  #span(day: number): readonly [opens: number, closes: number] | null {
+    const known = this.#spans.get(day)
+    if (known !== undefined) return known
+    if (this.#spans.size >= mostSpans) this.#spans.clear()
+    const closingDay = this.#close <= this.#open ? day + dayMs : day
+    const span = this.#opensOn(day)
+      ? ([this.#instant(day + this.#open), this.#instant(closingDay + this.#close)] as const)
+      : null
+    this.#spans.set(day, span)
+    return span
   }
 
   #opensOn(day: number): boolean {

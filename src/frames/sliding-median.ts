@@ -7,7 +7,6 @@ export class SlidingMedian {
   readonly #sorted: Float64Array
   #count = 0
   #next = 0
-  #sumOfSquares = 0
 
   constructor(span: number) {
     this.#ring = new Float64Array(span)
@@ -27,7 +26,6 @@ export class SlidingMedian {
     this.#sorted.copyWithin(at + 1, at, this.#count)
     this.#sorted[at] = value
     this.#count++
-    this.#sumOfSquares += value * value
   }
 
   /** 0 while empty. */
@@ -38,18 +36,18 @@ export class SlidingMedian {
     return n % 2 === 1 ? this.#sorted[middle]! : (this.#sorted[middle - 1]! + this.#sorted[middle]!) / 2
   }
 
-  /** 0 while empty or when all values are 0. */
+  /** 0 while empty or when all values are 0. Summed afresh, so that no value leaves a trace behind it. */
   get rootMeanSquare(): number {
-    return this.#count === 0 || this.#sorted[this.#count - 1] === 0
-      ? 0
-      : Math.sqrt(Math.max(0, this.#sumOfSquares) / this.#count)
+    if (this.#count === 0) return 0
+    let sum = 0
+    for (let i = 0; i < this.#count; i++) sum += this.#sorted[i]! ** 2
+    return Math.sqrt(sum / this.#count)
   }
 
   #drop(value: number): void {
     const at = this.#place(value)
     this.#sorted.copyWithin(at, at + 1, this.#count)
     this.#count--
-    this.#sumOfSquares -= value * value
   }
 
   /** First place whose value is not below `value`. */
@@ -65,19 +63,13 @@ export class SlidingMedian {
   }
 
   snapshot(): SlidingMedianSnapshot {
-    return {
-      ring: this.#ring.slice(),
-      count: this.#count,
-      next: this.#next,
-      sumOfSquares: this.#sumOfSquares,
-    }
+    return { ring: this.#ring.slice(), count: this.#count, next: this.#next }
   }
 
-  restore({ ring, count, next, sumOfSquares }: SlidingMedianSnapshot): void {
+  restore({ ring, count, next }: SlidingMedianSnapshot): void {
     this.#ring.set(ring)
     this.#count = count
     this.#next = next
-    this.#sumOfSquares = sumOfSquares
     this.#sorted.set(ring)
     this.#sorted.subarray(0, count).sort()
   }
@@ -87,13 +79,39 @@ export interface SlidingMedianSnapshot {
   readonly ring: Float64Array
   readonly count: number
   readonly next: number
-  readonly sumOfSquares: number
 }
 
-/** Median of the first `count` entries; reorders them. 0 for none. */
+/** Median of the first `count` entries; reorders them. 0 for none. Selection in linear time (Hoare 1961). */
 export function medianOf(values: Float64Array, count: number): number {
   if (count === 0) return 0
-  const part = values.subarray(0, count).sort()
   const middle = count >> 1
-  return count % 2 === 1 ? part[middle]! : (part[middle - 1]! + part[middle]!) / 2
+  const upper = select(values, count, middle)
+  if (count % 2 === 1) return upper
+  let lower = values[0]!
+  for (let i = 1; i < middle; i++) if (values[i]! > lower) lower = values[i]!
+  return (lower + upper) / 2
+}
+
+/** The entry of rank k, counted from 0, of the first `count`; smaller ones are left before it. */
+function select(values: Float64Array, count: number, k: number): number {
+  let low = 0
+  let high = count - 1
+  while (low < high) {
+    const pivot = values[(low + high) >> 1]!
+    let i = low
+    let j = high
+    while (i <= j) {
+      while (values[i]! < pivot) i++
+      while (values[j]! > pivot) j--
+      if (i <= j) {
+        const held = values[i]!
+        values[i++] = values[j]!
+        values[j--] = held
+      }
+    }
+    if (k <= j) high = j
+    else if (k >= i) low = i
+    else break
+  }
+  return values[k]!
 }
