@@ -108,6 +108,7 @@ export class PageState {
       version,
       demo,
       ensembles: [...this.#ensembles.values()].map((ensemble) => ensemble.view(now)),
+      mostPoints: (this.#options.history ?? usualHistory).points,
       alerts: this.#sortedAlerts(),
       findings: this.#sortedFindings(),
       feeds: [...this.#feeds.values()],

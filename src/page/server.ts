@@ -76,7 +76,7 @@ export async function pageApp(options: PageOptions): Promise<FastifyInstance> {
   const access = new Access({ token: options.token ?? null, url: options.url ?? null })
   const assets = await clientAssets(options.clientFolder)
   const streams = new EventStreams(randomBytes(6).toString('hex'), options.limits)
-  const server = fastify({ bodyLimit: 4096, forceCloseConnections: true, exposeHeadRoutes: false })
+  const server = fastify({ bodyLimit: 4096, forceCloseConnections: true })
 
   const timers = [
     setInterval(() => {
@@ -122,14 +122,18 @@ export async function pageApp(options: PageOptions): Promise<FastifyInstance> {
     return request.headers['if-none-match'] === asset.etag ? reply.code(304).send() : reply.send(asset.body)
   })
   server.get('/state', () => state.view(now()))
-  server.get<{ Querystring: { after?: unknown } }>('/events', (request, reply) => {
-    if (streams.full) return refuse(reply, 503, 'Too many pages are open.')
-    const said = request.headers['last-event-id'] ?? request.query.after
-    openStream(reply, streams, () =>
-      streams.open(reply.raw, typeof said === 'string' ? said : null, () => state.view(now())),
-    )
-    return reply
-  })
+  server.get<{ Querystring: { after?: unknown } }>(
+    '/events',
+    { exposeHeadRoute: false },
+    (request, reply) => {
+      if (streams.full) return refuse(reply, 503, 'Too many pages are open.')
+      const said = request.headers['last-event-id'] ?? request.query.after
+      openStream(reply, streams, () =>
+        streams.open(reply.raw, typeof said === 'string' ? said : null, () => state.view(now())),
+      )
+      return reply
+    },
+  )
   server.get('/metrics', async (_request, reply) => {
     const { contentType, body } = await options.metrics()
     return reply.header('content-type', contentType).send(body)

@@ -48,7 +48,7 @@ strong { font-weight: 600; }
 h2 .shape { margin-left: 0.25rem; }
 
 .strips { margin-top: 0.9rem; }
-.strip { display: grid; grid-template-columns: 11.5rem minmax(0, 1fr) 3rem; column-gap: 0.75rem; border-top: 1px solid var(--faint); }
+.strip { display: grid; grid-template-columns: 14.5rem minmax(0, 1fr) 3.25rem; column-gap: 0.75rem; border-top: 1px solid var(--faint); }
 .strip .label { margin: 0; padding: 0.3rem 0; font: 0.8125rem/1.35 var(--sans); display: flex; flex-wrap: wrap; align-content: flex-start; justify-content: space-between; column-gap: 0.5rem; }
 .strip .label small { flex-basis: 100%; font-size: 0.75rem; }
 .strip .value { font-weight: 600; }
@@ -63,11 +63,12 @@ h2 .shape { margin-left: 0.25rem; }
 .straining .strip:nth-last-child(2) path.main { stroke: var(--strain); }
 .shifted .strip:nth-last-child(2) path.main { stroke: var(--shift); }
 .strip .scale { margin: 0; padding: 0.1rem 0; font-size: 0.6875rem; display: flex; flex-direction: column; justify-content: space-between; }
-.axis { display: flex; justify-content: space-between; gap: 1rem; border-top: 1px solid var(--faint); padding: 0.15rem 3.75rem 0 12.25rem; margin: 0; font-size: 0.75rem; }
+.axis { display: flex; justify-content: space-between; gap: 1rem; border-top: 1px solid var(--faint); padding: 0.15rem 4rem 0 15.25rem; margin: 0; font-size: 0.75rem; }
 
 .carriers { margin-top: 1rem; }
-.bars li { display: grid; grid-template-columns: 11.5rem minmax(0, 1fr) 3rem; column-gap: 0.75rem; align-items: center; padding: 0.1rem 0; }
+.bars li { display: grid; grid-template-columns: 14.5rem minmax(0, 1fr) 3.25rem; column-gap: 0.75rem; align-items: center; padding: 0.1rem 0; }
 .bars .name { color: var(--ink); overflow: hidden; text-overflow: ellipsis; white-space: nowrap; }
+.bars li > span:last-child { white-space: nowrap; }
 .bars .track { display: block; height: 0.6rem; }
 .bars .bar { display: block; height: 100%; min-width: 1px; background: var(--line); }
 .bars .against { background: none; border: 1px solid var(--line); }
@@ -82,6 +83,7 @@ details p { margin-top: 0.35rem; }
 .alert.standing > p > strong { color: var(--shift); }
 .alert.over, .alert.withheld > p > strong { color: var(--soft); }
 .cautions { margin-top: 0.5rem; color: var(--soft); }
+.feeds .unwell { font-weight: 600; color: var(--strain); }
 .feeds li { font-variant-numeric: tabular-nums; }
 footer { margin-top: 3rem; padding-top: 0.75rem; border-top: 1px solid var(--faint); }
 footer p { margin-top: 0.5rem; }
@@ -92,7 +94,7 @@ input, button { font: inherit; color: inherit; background: var(--ground); border
   .strip { grid-template-columns: minmax(0, 1fr) 2.5rem; }
   .strip .label { grid-column: 1 / -1; padding: 0.3rem 0 0; }
   .axis { padding: 0.15rem 3.25rem 0 0; }
-  .bars li { grid-template-columns: minmax(0, 8rem) minmax(0, 1fr) 3rem; }
+  .bars li { grid-template-columns: minmax(0, 8rem) minmax(0, 1fr) 3.25rem; }
 }
 @media (prefers-reduced-motion: no-preference) { html { scroll-behavior: smooth; } }
 `

@@ -14,6 +14,8 @@ export interface PageView {
   readonly version: string
   readonly demo: { readonly speed: number | null; readonly note: string } | null
   readonly ensembles: readonly EnsembleView[]
+  /** So many points a history holds. */
+  readonly mostPoints: number
   /** Those that stand first, then newest first. */
   readonly alerts: readonly AlertView[]
   /** Those that last first, then newest first. */

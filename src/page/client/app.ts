@@ -35,7 +35,12 @@ class Page {
     ({ ensemble, signal, finding, from }) => JSON.stringify([ensemble, signal, finding, from]),
     (finding) => `${this.#titleOf(finding.ensemble)}, ${findingWords(finding)}`,
   )
-  readonly #feedLines = textLines<FeedView>(this.#feeds, nameOf, (feed) => `${feed.name}: ${feedWords(feed)}`)
+  readonly #feedLines = textLines<FeedView>(
+    this.#feeds,
+    nameOf,
+    (feed) => `${feed.name}: ${feedWords(feed)}`,
+    ({ connected }) => connected === false,
+  )
   readonly #cautionLines = textLines<string>(this.#cautions, String, String)
 
   constructor(root: Element) {
@@ -143,10 +148,21 @@ class Page {
 
 const nameOf = ({ name }: { readonly name: string }): string => name
 
-function textLines<T>(parent: Element, key: (item: T) => string, words: (item: T) => string) {
+function textLines<T>(
+  parent: Element,
+  key: (item: T) => string,
+  words: (item: T) => string,
+  isUnwell: (item: T) => boolean = () => false,
+) {
   return new KeyedList<T, HTMLLIElement>(parent, key, () => {
     const node = el('li')
-    return { node, update: (item) => say(node, words(item)) }
+    return {
+      node,
+      update(item) {
+        say(node, words(item))
+        node.classList.toggle('unwell', isUnwell(item))
+      },
+    }
   })
 }
 

@@ -85,8 +85,7 @@ export function ensemblePart(name: string, now: () => number): Part<EnsembleView
         since,
         [lasting === '' ? '' : `${sentenceCase(lasting)}.`, frameWords(ensemble, now())].join(' ').trim(),
       )
-      say(why, ensemble.why === null ? '' : `Why ${ensemble.state}: ${ensemble.why}`)
-      why.hidden = ensemble.why === null
+      say(why, ensemble.why === null ? sentenceOf(ensemble) : `Why ${ensemble.state}: ${ensemble.why}`)
       past.update(ensemble)
       bars.update(ensemble)
       say(signals, signalsWords(ensemble))

@@ -1,7 +1,5 @@
 import type { EnsembleChange, EnsembleView, PageChange, PageView, Point } from '../view.ts'
 
-const mostPoints = 600
-
 /** The view after a change. What the change does not name stays the same object. */
 export function afterChange(view: PageView, change: PageChange): PageView {
   const changed = new Map(change.ensembles.map((one) => [one.present.name, one]))
@@ -10,7 +8,9 @@ export function afterChange(view: PageView, change: PageChange): PageView {
     now: change.now,
     ensembles: view.ensembles.map((ensemble) => {
       const news = changed.get(ensemble.name)
-      return news === undefined ? ensemble : { ...news.present, history: historyAfter(ensemble, news) }
+      return news === undefined
+        ? ensemble
+        : { ...news.present, history: historyAfter(ensemble, news).slice(-view.mostPoints) }
     }),
     alerts: change.alerts ?? view.alerts,
     findings: change.findings ?? view.findings,
@@ -23,7 +23,7 @@ function historyAfter({ history }: EnsembleView, { more, whole }: EnsembleChange
   if (whole !== undefined) return whole
   if (more === undefined) return history
   const last = history.at(-1)?.[0] ?? Number.NEGATIVE_INFINITY
-  return [...history, ...more.filter(([time]) => time > last)].slice(-mostPoints)
+  return [...history, ...more.filter(([time]) => time > last)]
 }
 
 const urgency = { shifted: 0, straining: 1, learning: 2, steady: 3 } as const

@@ -112,14 +112,15 @@ export function strips(): { readonly node: HTMLElement; update(ensemble: Ensembl
     node,
     update(ensemble) {
       const points = pointsOf(ensemble)
-      node.hidden = points.length < 2
+      node.hidden = points.length < 2 || points.every(([, share]) => share === null)
       if (node.hidden) return
       const columns = Array.from({ length: 8 }, (_, k) => points.map((point) => point[k + 1] ?? null))
       const marks = marksOf(ensemble, points)
       for (const part of parts) part.update(columns, marks)
       const last = points.at(-1)![0]
-      say(from, `${clock(points[0]![0], last)} UTC`)
-      say(to, `${clock(last)} UTC`)
+      const first = points[0]![0]
+      say(from, `${clock(first)} UTC`)
+      say(to, `${clock(last, first)} UTC`)
     },
   }
 }
@@ -166,8 +167,8 @@ function strip({ label, note, lines, draw }: StripPlan) {
   const plot = svg(
     'svg',
     { viewBox: `0 0 ${width} ${height}`, preserveAspectRatio: 'none', role: 'img' },
-    ...marks,
     ...paths,
+    ...marks,
   )
   const [high, low] = [el('span'), el('span')]
   const node = el(

@@ -28,7 +28,9 @@ export const figure = (value: number | null | undefined): string =>
   value === null || value === undefined ? '–' : String(Number(value.toPrecision(3)))
 
 export const percent = (ratio: number | null | undefined): string =>
-  ratio === null || ratio === undefined ? '–' : `${(100 * ratio).toFixed(Math.abs(ratio) < 0.0995 ? 1 : 0)} %`
+  ratio === null || ratio === undefined
+    ? '–'
+    : `${(100 * ratio).toFixed(Math.abs(ratio) < 0.0995 ? 1 : 0).replace('-', '−')} %`
 
 export const count = (n: number, one: string, many: string): string =>
   `${n.toLocaleString('en')} ${n === 1 ? one : many}`
@@ -138,13 +140,15 @@ export function frameWords({ frame, time, arrived, spectrum }: EnsembleView, now
   return `Last frame: number ${frame.toLocaleString('en')}, ended ${clock(time)} UTC${ago}${stale}.`
 }
 
-/** The state of the whole in a line, for the head of the page and the title. */
+/** How many ensembles are in which state, worst first, and whether a feed is away. */
 export function summaryWords(view: PageView): string {
   const order = ['shifted', 'straining', 'learning', 'steady'] as const
   const parts = order.flatMap((state) => {
     const n = view.ensembles.filter((ensemble) => ensemble.state === state).length
     return n === 0 ? [] : [`${n} ${state}`]
   })
+  const away = view.feeds.filter(({ connected }) => connected === false).length
+  if (away > 0) parts.push(`${count(away, 'feed is', 'feeds are')} not connected`)
   return parts.length === 0 ? 'nothing is watched' : parts.join(', ')
 }
 
