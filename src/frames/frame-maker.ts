@@ -177,11 +177,20 @@ export class FrameMaker {
     return this.#made({})
   }
 
-  /** Sources, and how many of the waiting steps each has gone ahead of what holds the clock. */
+  /**
+   * Sources, and the steps by which each runs ahead of what holds the clock: of the slowest source, or, while
+   * one has not spoken, of the first waiting step. With `row` the rows that wait in between.
+   */
   *leads(now: number): Generator<readonly [source: string, steps: number]> {
-    const floor = Math.max(this.#watermarks.reached(now), this.#aligner.pendingSince)
-    for (const [source, latest] of this.#watermarks.living())
-      yield [source, latest > floor ? this.#aligner.pendingWithin(floor, latest) : 0]
+    const { step } = this.#options
+    const since = this.#aligner.pendingSince
+    const reached = this.#watermarks.reached(now)
+    const floor = since < Number.POSITIVE_INFINITY ? Math.max(reached, since) : reached
+    for (const [source, latest] of this.#watermarks.living()) {
+      if (!(latest > floor) || since === Number.POSITIVE_INFINITY) yield [source, 0]
+      else if (step === 'row') yield [source, this.#aligner.pendingWithin(floor, latest)]
+      else yield [source, (latest - floor) / step]
+    }
   }
 
   #note(fate: Fate, place: number, drops: Drops): void {
