@@ -132,13 +132,8 @@ export class MomentEstimator implements Estimator {
   correlation(out: Float64Array, active: Int32Array): void {
     const scales = new Float64Array(this.#size)
     for (const i of active) scales[i] = Math.sqrt(this.variance(i))
-    this.#fill(out, active, scales)
+    this.#fill(out, active, scales, 1)
     const n = active.length
-    for (let k = 0; k < n * n; k++) {
-      const r = out[k]!
-      if (r > 1) out[k] = 1
-      else if (r < -1) out[k] = -1
-    }
     for (let a = 0; a < n; a++) out[a * n + a] = 1
   }
 
@@ -152,7 +147,7 @@ export class MomentEstimator implements Estimator {
       const fixed = scales[i] ?? 0
       own[i] = fixed > 0 ? fixed : Math.sqrt(this.variance(i))
     }
-    this.#fill(out, active, own)
+    this.#fill(out, active, own, Number.POSITIVE_INFINITY)
   }
 
   /** Moves every pivot to the present mean: exact but for rounding, and the sums begin at 0 again. */
@@ -237,7 +232,8 @@ export class MomentEstimator implements Estimator {
     return s - di * sumJ - dj * (sumI - di * both)
   }
 
-  #fill(out: Float64Array, active: Int32Array, scales: Float64Array): void {
+  /** No entry's size exceeds `most`. */
+  #fill(out: Float64Array, active: Int32Array, scales: Float64Array, most: number): void {
     const n = active.length
     const means = new Float64Array(n)
     const factors = new Float64Array(n)
@@ -248,19 +244,26 @@ export class MomentEstimator implements Estimator {
       factors[a] = count > 0 && scales[i]! > 0 ? 1 / (scales[i]! * Math.sqrt(count)) : 0
     }
     if (this.#gaps === null) {
-      this.#fillWithoutGaps(out, active, means, factors)
+      this.#fillWithoutGaps(out, active, means, factors, most)
       return
     }
     for (let a = 0; a < n; a++) {
       for (let b = 0; b <= a; b++) {
-        const m = this.#shifted(active[a]!, active[b]!, means[a]!, means[b]!) * factors[a]! * factors[b]!
+        const own = this.#shifted(active[a]!, active[b]!, means[a]!, means[b]!) * factors[a]! * factors[b]!
+        const m = Math.min(most, Math.max(-most, own))
         out[a * n + b] = m
         out[b * n + a] = m
       }
     }
   }
 
-  #fillWithoutGaps(out: Float64Array, active: Int32Array, means: Float64Array, factors: Float64Array): void {
+  #fillWithoutGaps(
+    out: Float64Array,
+    active: Int32Array,
+    means: Float64Array,
+    factors: Float64Array,
+    most: number,
+  ): void {
     const n = active.length
     const second = this.#second
     for (let a = 0; a < n; a++) {
@@ -270,7 +273,8 @@ export class MomentEstimator implements Estimator {
       const factor = factors[a]!
       const at = a * n
       for (let b = 0; b <= a; b++) {
-        out[at + b] = (second[row + active[b]!]! - sum * means[b]!) * factor * factors[b]!
+        const m = (second[row + active[b]!]! - sum * means[b]!) * factor * factors[b]!
+        out[at + b] = Math.min(most, Math.max(-most, m))
       }
     }
     mirror(out, n)
