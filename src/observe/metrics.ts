@@ -1,4 +1,4 @@
-import { Counter, Gauge, Histogram, Registry } from 'prom-client'
+import { Counter, collectDefaultMetrics, Gauge, Histogram, Registry } from 'prom-client'
 import type { Judged, Step } from '../ensemble.ts'
 import { type SignalCondition, signalConditions } from '../frames/hygiene.ts'
 import { type DropCounts, type DropReason, dropReasons } from '../reasons.ts'
@@ -100,6 +100,8 @@ export class Metrics {
   readonly #checkpoint = this.#gauge('checkpoint_age_seconds', 'Since the last checkpoint was durable.', [])
   readonly #build = this.#gauge('build_info', 'Version of the monitor; always 1.', ['version', 'node'])
   readonly #named = new Map<string, Set<string>>()
+  readonly #weighed = new Map<string, readonly string[]>()
+  readonly #process = processRegistry()
 
   constructor(version: string) {
     this.#build.set({ version, node: process.version }, 1)
@@ -137,9 +139,10 @@ export class Metrics {
     this.#behind.set({ feed }, messages)
   }
 
-  /** `framesMs`: time spent on making the frame. `now` in milliseconds since 1970 UTC. */
+  /** What is not known, or not finite, has no series until it is known. `now` in milliseconds since 1970 UTC. */
   judged(judged: Judged, now: number): void {
     const { ensemble, verdict, bulk } = judged
+    const { distance } = verdict
     this.#frames.inc({ ensemble })
     this.#delay.observe({ ensemble }, Math.max(0, now - judged.time) / 1000)
     for (const [step, ms] of Object.entries(judged.spent) as [Step, number][]) {
@@ -147,23 +150,29 @@ export class Metrics {
     }
     this.#last.set({ ensemble }, judged.time / 1000)
     this.#window.set({ ensemble }, judged.window.frames)
-    this.#escapes.set({ ensemble }, bulk?.escapes.length ?? 0)
-    this.#setOrLeave(this.#share, ensemble, judged.share)
-    this.#setOrLeave(this.#certificate, ensemble, judged.certificate)
-    this.#setOrLeave(this.#sight, ensemble, verdict.sight)
-    this.#setOrLeave(this.#fit, ensemble, bulk?.fit ?? null)
-    this.#setOrLeave(this.#distance, ensemble, verdict.distance?.w2 ?? null)
-    this.#setOrLeave(this.#ceiling, ensemble, verdict.distance?.ceiling ?? null)
-    this.#setOrLeave(this.#rotation, ensemble, verdict.distance?.rotation ?? null)
-    if (bulk !== null) {
-      this.#edge.set({ ensemble, side: 'lower' }, bulk.lower)
-      this.#edge.set({ ensemble, side: 'upper' }, bulk.upper)
-    }
-    for (const [statistic, ratio] of Object.entries(verdict.statistics)) {
-      this.#evidence.set({ ensemble, statistic }, ratio)
-    }
+    show(this.#escapes, { ensemble }, bulk?.escapes.length)
+    show(this.#share, { ensemble }, judged.share)
+    show(this.#certificate, { ensemble }, judged.certificate)
+    show(this.#sight, { ensemble }, verdict.sight)
+    show(this.#fit, { ensemble }, bulk?.fit)
+    show(this.#edge, { ensemble, side: 'lower' }, bulk?.lower)
+    show(this.#edge, { ensemble, side: 'upper' }, bulk?.upper)
+    show(this.#distance, { ensemble }, distance?.w2)
+    show(this.#ceiling, { ensemble }, distance?.ceiling)
+    show(this.#rotation, { ensemble }, distance?.rotation)
+    this.#weigh(ensemble, verdict.statistics)
     for (const state of states) this.#state.set({ ensemble, state }, state === verdict.state ? 1 : 0)
     if (verdict.shift !== null) this.#shifts.inc({ ensemble, kind: verdict.shift.kind })
+  }
+
+  /** Evidence that is not weighed at present leaves the table. */
+  #weigh(ensemble: string, ratios: Readonly<Record<string, number>>): void {
+    for (const statistic of this.#weighed.get(ensemble) ?? []) {
+      if (!(statistic in ratios)) this.#evidence.remove({ ensemble, statistic })
+    }
+    for (const [statistic, ratio] of Object.entries(ratios))
+      show(this.#evidence, { ensemble, statistic }, ratio)
+    this.#weighed.set(ensemble, Object.keys(ratios))
   }
 
   conditions(ensemble: string, counts: Readonly<Record<SignalCondition, number>>): void {
@@ -194,12 +203,8 @@ export class Metrics {
   }
 
   async text(): Promise<{ readonly contentType: string; readonly body: string }> {
-    return { contentType: this.registry.contentType, body: await this.registry.metrics() }
-  }
-
-  #setOrLeave(gauge: Gauge, ensemble: string, value: number | null): void {
-    if (value === null) gauge.remove({ ensemble })
-    else gauge.set({ ensemble }, value)
+    const [own, process] = await Promise.all([this.registry.metrics(), this.#process.metrics()])
+    return { contentType: this.registry.contentType, body: `${own.trimEnd()}\n${process}` }
   }
 
   #counter(name: string, help: string, labelNames: string[]): Counter {
@@ -213,4 +218,22 @@ export class Metrics {
   #histogram(name: string, help: string, labelNames: string[], buckets: number[]): Histogram {
     return new Histogram({ name: prefix + name, help, labelNames, buckets, registers: [this.registry] })
   }
+}
+
+function show(gauge: Gauge, labels: Record<string, string>, value: number | null | undefined): void {
+  if (typeof value === 'number' && Number.isFinite(value)) gauge.set(labels, value)
+  else gauge.remove(labels)
+}
+
+/**
+ * Memory, processor time and file handles of the process under their usual names. The library's other default
+ * metrics are left out: some break the naming rules, some are NaN at times.
+ */
+function processRegistry(): Registry {
+  const registry = new Registry()
+  collectDefaultMetrics({ register: registry })
+  for (const { name } of registry.getMetricsAsArray()) {
+    if (!/^(process_|nodejs_(heap_size|external_memory))/.test(name)) registry.removeSingleMetric(name)
+  }
+  return registry
 }

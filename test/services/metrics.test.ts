@@ -44,7 +44,11 @@ test('the metrics of a running monitor pass promtool, hold what is promised, and
       text = await (await fetch(`${page}metrics`)).text()
       return /^tautline_spectral_distance\{ensemble="desk"\} /m.test(text)
     })
-    await promtool(inject('prometheus'), ['check', 'metrics'], text)
+    expect(await promtool(inject('prometheus'), ['check', 'metrics'], text)).toEqual({
+      code: 0,
+      stdout: '',
+      stderr: '',
+    })
     for (const name of promised) expect(text, name).toContain(`# TYPE tautline_${name} `)
     expect(text).not.toMatch(/ (NaN|Nan|Inf|\+Inf|-Inf)$/m)
     const signalLabels = new Set(
