@@ -2,7 +2,7 @@ import type { BatchBuilder } from './batch-builder.ts'
 import { utf8 } from './decimal.ts'
 import { pointAt, pointerSteps } from './pointer.ts'
 import type { DocumentReader } from './record-reader.ts'
-import { epochNumber, readTime, type TimeUnit } from './times.ts'
+import { epochNumber, longestTime, readTime, type TimeUnit } from './times.ts'
 
 /** How a time is taken: as a JSON number, as a JSON text. */
 export interface TimeRule {
@@ -27,7 +27,6 @@ export interface JsonPointers {
 
 /** Deepest nesting of arrays and objects in a record. */
 export const deepest = 64
-const longestTime = 80
 
 /** Reads one JSON document by RFC 6901 pointers: one reading, or an array of them. */
 export function jsonReader(pointers: JsonPointers, rule: TimeRule): DocumentReader {

@@ -62,10 +62,13 @@ export class LineReader implements RecordReader {
   }
 
   #slow(bytes: Buffer, from: number, to: number, out: BatchBuilder): void {
-    if (isBlank(bytes, from, to)) return
-    out.nextRecord()
-    if (to - from > this.#limit) out.refuse('too-long', tooLong(this.#limit), bytes, from, to)
-    else this.#document(bytes, from, to, out)
+    if (to - from > this.#limit) {
+      out.nextRecord()
+      out.refuse('too-long', tooLong(this.#limit), bytes, from, to)
+    } else if (!isBlank(bytes, from, to)) {
+      out.nextRecord()
+      this.#document(bytes, from, to, out)
+    }
   }
 }
 

@@ -11,6 +11,8 @@ export const inRange = (time: number): number =>
   time >= earliestTime && time < latestTime ? time : Number.NaN
 
 const dayMs = 86_400_000
+/** No text longer than this is taken for a time. */
+export const longestTime = 80
 /** Days before the first of each month in a common year. */
 const daysBefore = [0, 31, 59, 90, 120, 151, 181, 212, 243, 273, 304, 334, 365]
 
@@ -41,7 +43,8 @@ function dayNumber(year: number, month: number, day: number): number {
  * POSIX time. Fractions are read to 15 places, further ones are ignored.
  */
 export function readRfc3339(bytes: Uint8Array, from: number, to: number): number {
-  if (to - from < 10 || bytes[from + 4] !== 45 || bytes[from + 7] !== 45) return Number.NaN
+  if (to - from < 10 || to - from > longestTime || bytes[from + 4] !== 45 || bytes[from + 7] !== 45)
+    return Number.NaN
   const year = 100 * pair(bytes, from) + pair(bytes, from + 2)
   const days = dayNumber(year, pair(bytes, from + 5), pair(bytes, from + 8))
   if (to - from === 10) return inRange(days * dayMs)

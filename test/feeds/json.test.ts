@@ -163,7 +163,16 @@ const scalar = fc.oneof(
 const time = fc.oneof(
   fc.integer({ min: 1_600_000_000, max: 1_800_000_000 }).map(String),
   fc.integer({ min: t, max: t + 1e9 }).map(String),
-  fc.constantFrom(`"2023-11-14T22:13:20Z"`, '"2023-11-14"', `"${t}"`, `${t}.5`, '1.7e12', '-1', '1e15'),
+  fc.constantFrom(
+    `"2023-11-14T22:13:20Z"`,
+    '"2023-11-14"',
+    `"${t}"`,
+    `${t}.5`,
+    '1.7e12',
+    '-1',
+    '1e15',
+    `"2023-11-14T22:13:20.${'5'.repeat(80)}Z"`,
+  ),
 )
 const name = fc.constantFrom('"A"', '"B"', '"QUAY"', '"é"', '"漢"', '""', '"a\\n"', '"\ud800"', '17')
 const member = fc.oneof(
