@@ -9,6 +9,10 @@ const mostAMinute = 20
 const minuteMs = 60_000
 const mostSentences = 1000
 
+/** What JSON leaves as it is but a terminal obeys or does not show: DEL and C1 controls, signs of direction and width. */
+const unseen = /[\u007f-\u009f\u200b-\u200f\u2028-\u202e\u2060-\u2069\ufeff]/g
+const escaped = (sign: string): string => `\\u${sign.charCodeAt(0).toString(16).padStart(4, '0')}`
+
 export interface LogOptions {
   readonly level: LogLevel
   /** Where lines go; each is one JSON object, so that no text from outside can make a line of its own. */
@@ -29,7 +33,7 @@ export function structuredLog({ level, destination, redact, now }: LogOptions): 
       timestamp: () => `,"time":"${new Date(now()).toISOString()}"`,
       formatters: { level: (label) => ({ level: label }) },
     },
-    { write: (line: string) => destination.write(redact(line)) },
+    { write: (line: string) => destination.write(redact(line).replaceAll(unseen, escaped)) },
   )
   const spoken = new Map<string, { since: number; count: number; held: number }>()
   return (at, sentence, fields = {}) => {
@@ -46,6 +50,12 @@ export function structuredLog({ level, destination, redact, now }: LogOptions): 
       said.held++
       return
     }
-    logger[at](fields, sentence)
+    logger[at](plain(fields), sentence)
   }
 }
+
+/** Errors by their message: JSON alone would make `{}` of them. */
+const plain = (fields: LogFields): LogFields =>
+  Object.fromEntries(
+    Object.entries(fields).map(([name, value]) => [name, value instanceof Error ? value.message : value]),
+  )

@@ -1,8 +1,9 @@
 import { z } from 'zod'
+import type { Bulk } from '../bulk/bulk.ts'
 import type { Judged } from '../ensemble.ts'
 import type { Finding } from '../frames/frame.ts'
 import { type DropCounts, dropReasons, findingKinds } from '../reasons.ts'
-import { type Shift, shiftKinds, states, type Transition } from '../regime/regime.ts'
+import { type Distance, type Shift, shiftKinds, states, type Transition } from '../regime/regime.ts'
 
 /** Records of `replay --json` and `watch --json`: one object a line, `type` first. This file is their one source. */
 
@@ -27,7 +28,7 @@ export const frameRecordSchema = z
     state: z.enum(states),
     signals: count.meta({ description: 'Signals that take part in the matrix.' }),
     missing: count.meta({ description: 'Signals without a value in this frame.' }),
-    window: z.strictObject({ frames: count, effective: z.number() }),
+    window: z.strictObject({ frames: count, effective: known(z.number()) }),
     share: known(z.number()).meta({ description: 'Leading eigenvalue over the trace.' }),
     leading: z.array(z.number()).meta({ description: 'Largest eigenvalues, at most eight.' }),
     edge: known(
@@ -53,29 +54,29 @@ export const shiftRecordSchema = z
   .strictObject({
     type: z.literal('shift'),
     ensemble: z.string(),
-    number: count,
+    number: count.meta({ description: 'Counts the shifts of the ensemble, from 1.' }),
     kind: z.enum(shiftKinds),
-    start: time,
+    start: time.meta({ description: 'Estimate of when it began; the interval is start_from to start_to.' }),
     start_from: time,
     start_to: time,
     confirmed: time,
-    frame: count,
+    frame: count.meta({ description: 'Frame in which it was confirmed.' }),
     carriers: z.array(carrierSchema),
-    remainder: z.number(),
-    share_before: z.number(),
-    share_after: z.number(),
-    distance: distanceSchema,
+    remainder: known(z.number()).meta({ description: 'With the shares of all signals it makes 1.' }),
+    share_before: known(z.number()).meta({ description: 'Leading eigenvalue over the trace, reference.' }),
+    share_after: known(z.number()),
+    distance: known(distanceSchema),
     evidence: z.strictObject({
       statistic: z.string(),
-      value: z.number(),
-      limit: z.number(),
-      ratio: z.number(),
+      value: known(z.number()),
+      limit: known(z.number()),
+      ratio: known(z.number()),
     }),
     certificate: known(z.number()),
-    sight: z.number(),
+    sight: known(z.number()).meta({ description: 'Weakest mode that can be seen, over the noise variance.' }),
     likeness: z.array(z.strictObject({ regime: count, likeness: z.number() })),
     statistics: z.array(z.strictObject({ statistic: z.string(), value: z.number(), limit: z.number() })),
-    spectrum_before: z.array(z.number()),
+    spectrum_before: z.array(z.number()).meta({ description: 'Eigenvalues, largest first.' }),
     spectrum_after: z.array(z.number()),
   })
   .meta({ title: 'Shift' })
@@ -117,12 +118,29 @@ export const summaryRecordSchema = z
   })
   .meta({ title: 'Summary' })
 
+export const errorRecordSchema = z
+  .strictObject({
+    type: z.literal('error'),
+    code: z
+      .string()
+      .regex(/^[a-z]+(-[a-z]+)*$/)
+      .meta({ description: 'From the catalogue of errors.' }),
+    sentence: z.string(),
+    detail: z.string(),
+    remedy: z.string(),
+    problems: z
+      .array(z.looseObject({ code: z.string(), line: count, column: count, key: z.string() }))
+      .meta({ description: 'What is wrong in the settings, place by place.' }),
+  })
+  .meta({ title: 'Error', description: 'What ended the run; the last record.' })
+
 export const recordSchema = z.discriminatedUnion('type', [
   frameRecordSchema,
   shiftRecordSchema,
   transitionRecordSchema,
   findingRecordSchema,
   summaryRecordSchema,
+  errorRecordSchema,
 ])
 
 export type FrameRecord = z.output<typeof frameRecordSchema>
@@ -137,8 +155,27 @@ export const timestamp = (ms: number): string => new Date(Math.round(ms)).toISOS
 
 const timestampOrNull = (ms: number | null): string | null => (ms === null ? null : timestamp(ms))
 
+/**
+ * What keeps a record free of what JSON does not know. Nothing in the house gives a figure that is not finite,
+ * and a test holds that; should one come all the same, it is null, and so is the group that it belongs to.
+ */
+const figure = (value: number | null): number | null =>
+  value !== null && Number.isFinite(value) ? value : null
+
+const isWhole = (group: object): boolean =>
+  Object.values(group).every((value) => typeof value !== 'number' || Number.isFinite(value))
+
+const group = <T extends object>(value: T | null): T | null =>
+  value !== null && isWhole(value) ? value : null
+
+const figures = (values: ArrayLike<number>): number[] => {
+  const list = Array.from(values)
+  return list.every(Number.isFinite) ? list : []
+}
+
 export function frameRecord(judged: Judged): FrameRecord {
   const { verdict, bulk, window } = judged
+  const { distance, evidence } = verdict
   return {
     type: 'frame',
     ensemble: judged.ensemble,
@@ -147,37 +184,39 @@ export function frameRecord(judged: Judged): FrameRecord {
     state: verdict.state,
     signals: judged.signals,
     missing: judged.missing,
-    window: { frames: window.frames, effective: window.effective },
-    share: judged.share,
-    leading: [...judged.leading],
-    edge:
-      bulk === null
-        ? null
-        : {
-            model: bulk.model,
-            lower: bulk.lower,
-            upper: bulk.upper,
-            level: bulk.level,
-            limit: bulk.limit,
-            fit: bulk.fit,
-          },
-    escapes: bulk === null ? [] : bulk.escapes.map(({ value, signals }) => ({ value, signals })),
-    distance: verdict.distance === null ? null : { ...verdict.distance },
+    window: { frames: window.frames, effective: figure(window.effective) },
+    share: figure(judged.share),
+    leading: figures(judged.leading),
+    edge: bulk === null ? null : group(edgeOf(bulk)),
+    escapes: (bulk?.escapes ?? []).map(({ value, signals }) => ({ value, signals })).filter(isWhole),
+    distance: group(distance === null ? null : distanceOf(distance)),
     evidence:
-      verdict.evidence === null
+      evidence === null || !Number.isFinite(evidence.ratio)
         ? null
         : {
-            ratio: verdict.evidence.ratio,
-            statistic: verdict.evidence.statistic,
-            since: timestampOrNull(verdict.evidence.since),
+            ratio: evidence.ratio,
+            statistic: evidence.statistic,
+            since: timestampOrNull(evidence.since),
           },
-    certificate: judged.certificate,
-    sight: verdict.sight,
-    spectrum: judged.spectrum,
+    certificate: figure(judged.certificate),
+    sight: figure(verdict.sight),
+    spectrum: group(judged.spectrum),
   }
 }
 
+const edgeOf = ({ model, lower, upper, level, limit, fit }: Bulk) => ({
+  model,
+  lower,
+  upper,
+  level,
+  limit,
+  fit,
+})
+
+const distanceOf = ({ w2, ceiling, rotation }: Distance) => ({ w2, ceiling, rotation })
+
 export function shiftRecord(ensemble: string, shift: Shift): ShiftRecord {
+  const { evidence } = shift
   return {
     type: 'shift',
     ensemble,
@@ -188,18 +227,23 @@ export function shiftRecord(ensemble: string, shift: Shift): ShiftRecord {
     start_to: timestamp(shift.startTo),
     confirmed: timestamp(shift.confirmed),
     frame: shift.frame,
-    carriers: [...shift.carriers],
-    remainder: shift.remainder,
-    share_before: shift.shareBefore,
-    share_after: shift.shareAfter,
-    distance: { ...shift.distance },
-    evidence: { ...shift.evidence },
-    certificate: shift.certificate,
-    sight: shift.sight,
-    likeness: [...shift.likeness],
-    statistics: [...shift.statistics],
-    spectrum_before: [...shift.spectrumBefore],
-    spectrum_after: [...shift.spectrumAfter],
+    carriers: shift.carriers.filter(isWhole),
+    remainder: figure(shift.remainder),
+    share_before: figure(shift.shareBefore),
+    share_after: figure(shift.shareAfter),
+    distance: group(distanceOf(shift.distance)),
+    evidence: {
+      statistic: evidence.statistic,
+      value: figure(evidence.value),
+      limit: figure(evidence.limit),
+      ratio: figure(evidence.ratio),
+    },
+    certificate: figure(shift.certificate),
+    sight: figure(shift.sight),
+    likeness: shift.likeness.filter(isWhole),
+    statistics: shift.statistics.filter(isWhole),
+    spectrum_before: figures(shift.spectrumBefore),
+    spectrum_after: figures(shift.spectrumAfter),
   }
 }
 
@@ -234,7 +278,11 @@ export function summaryRecord(totals: {
   return { type: 'summary', ...totals }
 }
 
+/** An identifier, not an address to fetch. */
+const recordsSchemaId = 'urn:tautline:records:1'
+
 /** The published JSON Schema of one record (schema/records.schema.json). */
 export function recordsJsonSchema(): Record<string, unknown> {
-  return { title: 'Tautline records', ...z.toJSONSchema(recordSchema) }
+  const { $schema, ...rest } = z.toJSONSchema(recordSchema)
+  return { $schema, $id: recordsSchemaId, title: 'Records of Tautline', ...rest }
 }

@@ -5,9 +5,12 @@ import { describe, expect, test } from 'vitest'
 import { defaultClock } from '../../demo-feeds/demo-feed.ts'
 import { deskEvents, deskReadings, deskSignals } from '../../demo-feeds/desk.ts'
 import { composeEnsemble } from '../../src/compose.ts'
+import type { Judged } from '../../src/ensemble.ts'
+import { errorCatalogue } from '../../src/errors.ts'
 import {
   findingRecord,
   frameRecord,
+  recordSchema,
   recordsJsonSchema,
   shiftRecord,
   summaryRecord,
@@ -15,7 +18,9 @@ import {
   timestamp,
   transitionRecord,
 } from '../../src/observe/records.ts'
+import type { Shift } from '../../src/regime/regime.ts'
 import { settingsSchema } from '../../src/settings/schema.ts'
+import { judged, shiftAt } from '../page/support/invented.ts'
 
 const published = fileURLToPath(new URL('../../schema/records.schema.json', import.meta.url))
 const ajv = new Ajv2020({ allErrors: true, strict: true, strictTypes: false })
@@ -107,6 +112,74 @@ describe('records', () => {
     }
   })
 
+  test('no figure of a steady frame or of a shift is left out: all that the house gives is finite', () => {
+    const spoken = records.filter(
+      (record) => (record.type === 'frame' && record.state !== 'learning') || record.type === 'shift',
+    )
+    expect(spoken.length).toBeGreaterThan(100)
+    const unknown = spoken.flatMap((record) => nulls(record, record.type))
+    expect(new Set(unknown)).toEqual(new Set(['frame.evidence.since']))
+    for (const record of spoken) if (record.type === 'frame') expect(record.leading.length).toBe(8)
+    for (const record of spoken) {
+      if (record.type === 'shift') expect(record.spectrum_after.length).toBe(deskSignals.length)
+    }
+  })
+
+  test('a figure that is not finite, wherever it stands, makes a record of the schema with null or less in it', () => {
+    const nan = (value: unknown): unknown =>
+      typeof value === 'number'
+        ? Number.NaN
+        : Array.isArray(value)
+          ? value.map(nan)
+          : value !== null && typeof value === 'object'
+            ? Object.fromEntries(Object.entries(value).map(([key, inner]) => [key, nan(inner)]))
+            : value
+    const counts = { frame: 7, time: 1000, signals: 48, missing: 1 }
+    const sound = judged(7)
+    const frame = frameRecord({
+      ...(nan(sound) as Judged),
+      ...counts,
+      window: { frames: 3, effective: Number.POSITIVE_INFINITY },
+      verdict: {
+        ...(nan(sound.verdict) as Judged['verdict']),
+        evidence: { ratio: Number.NaN, statistic: 'a', since: 5 },
+      },
+    })
+    const shift = shiftAt(7)
+    const { number, start, startFrom, startTo, confirmed } = shift
+    const shifted = shiftRecord('desk', {
+      ...(nan(shift) as Shift),
+      ...{ number, start, startFrom, startTo, confirmed, frame: 7 },
+    })
+    for (const record of [frame, shifted]) {
+      expect(recordSchema.safeParse(record).error).toBeUndefined()
+      expect(JSON.parse(JSON.stringify(record))).toEqual(record)
+    }
+    expect(frame).toMatchObject({
+      share: null,
+      leading: [],
+      edge: null,
+      escapes: [],
+      distance: null,
+      evidence: null,
+    })
+    expect(shifted).toMatchObject({ carriers: [], share_after: null, distance: null, spectrum_before: [] })
+  })
+
+  test('what ends a run is a record of the schema too', () => {
+    const { sentence, remedy } = errorCatalogue['settings-wrong']
+    const problem = {
+      code: 'settings-unknown-key',
+      line: 3,
+      column: 5,
+      key: 'ensembles.desk.clok',
+      nearest: 'clock',
+    }
+    expect(
+      validate({ type: 'error', code: 'settings-wrong', sentence, detail: '', remedy, problems: [problem] }),
+    ).toBe(true)
+  })
+
   test('the schema refuses a record with a key more, a key less or a wrong type', () => {
     const frame = records.find((record) => record.type === 'frame')!
     const { state: _state, ...less } = frame
@@ -126,3 +199,13 @@ describe('records', () => {
     expect(timestamp(Date.UTC(2026, 10, 2, 10, 42, 5, 250))).toBe('2026-11-02T10:42:05.250Z')
   })
 })
+
+/** Where a record holds null, as a path of keys. */
+function nulls(value: unknown, path: string): string[] {
+  if (value === null) return [path]
+  if (typeof value !== 'object') return []
+  const inside = Array.isArray(value)
+    ? value.map((inner) => [path, inner] as const)
+    : Object.entries(value).map(([key, inner]) => [`${path}.${key}`, inner] as const)
+  return inside.flatMap(([at, inner]) => nulls(inner, at))
+}
