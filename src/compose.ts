@@ -1,4 +1,4 @@
-import { BulkFitter } from './bulk/fit-bulk.ts'
+import { FittedEdge } from './bulk/fitted-edge.ts'
 import { Ensemble, type EnsembleSnapshot } from './ensemble.ts'
 import { failed, ok, type Result, TautlineError } from './errors.ts'
 import { FrameMaker, type FrameOptions } from './frames/frame-maker.ts'
@@ -51,7 +51,7 @@ export function composeEnsemble(
       window,
       lagged,
       solver,
-      bulk: new BulkFitter({ level: settings.level, decay }),
+      bulk: new FittedEdge({ level: settings.level, decay, scale: settings.scale }, solver),
       watch: new DistanceWatch(
         {
           window: { span, decay },

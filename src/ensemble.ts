@@ -1,5 +1,6 @@
 import type { Bulk } from './bulk/bulk.ts'
-import type { BulkFitter } from './bulk/fit-bulk.ts'
+import type { FittedEdge } from './bulk/fitted-edge.ts'
+import type { FrameTable } from './bulk/resampled-edge.ts'
 import type { FeedEvent } from './feeds/feed.ts'
 import type { Frame } from './frames/frame.ts'
 import type { FrameMaker, Made } from './frames/frame-maker.ts'
@@ -8,6 +9,7 @@ import type { Observation, RegimeWatch, Verdict } from './regime/regime.ts'
 import { leadingShare } from './spectrum/shares.ts'
 import type { SymmetricSolver } from './spectrum/spectrum.ts'
 import { SpectrumRing } from './spectrum/spectrum-ring.ts'
+import { FrameRing, type RingSnapshot } from './window/frame-ring.ts'
 import type { LaggedWindow } from './window/lagged-window.ts'
 import type { TwinWindow } from './window/twin-window.ts'
 
@@ -52,7 +54,7 @@ export interface EnsembleParts {
   readonly lagged: LaggedWindow | null
   readonly solver: SymmetricSolver
   readonly watch: RegimeWatch
-  readonly bulk: BulkFitter
+  readonly bulk: FittedEdge
   readonly scale: 'correlation' | 'covariance'
 }
 
@@ -70,6 +72,8 @@ export class Ensemble {
   #parts: EnsembleParts
   #matrix = new Float64Array(0)
   #laggedMatrix = new Float64Array(0)
+  /** The frames of the window (exponential memory: of its span), for resampling. */
+  #frames: FrameRing
   /** Spectra of the last windows, as many as the lag; null without one. */
   #spectra: SpectrumRing | null
   /** Leading modes asked of the solver: one more than escaped in the frame before. */
@@ -81,6 +85,7 @@ export class Ensemble {
     this.name = parts.name
     this.title = parts.title
     this.#parts = parts
+    this.#frames = new FrameRing(parts.window.cleaned.span)
     this.#spectra = parts.lagged === null ? null : new SpectrumRing(parts.lagged.lag)
   }
 
@@ -141,6 +146,7 @@ export class Ensemble {
     const started = lap()
     window.push(frame.scaled, frame.cleaned, frame.present, frame.clipped)
     lagged?.push(frame.cleaned, frame.present)
+    this.#frames.push(frame.cleaned, frame.present)
     const active = window.cleaned.active()
     const matrix = window.cleaned.full && active.length >= 2 ? this.#present(active) : null
     const certificate = matrix === null ? null : window.certificate(matrix, active, this.#scales ?? undefined)
@@ -148,10 +154,10 @@ export class Ensemble {
     let spectrum = matrix === null ? null : solver.solve(matrix, active.length, this.#modes)
     const solved = lap()
     const effective = window.cleaned.effective * maker.effectiveShare
-    let bulk = spectrum === null ? null : this.#parts.bulk.fit(spectrum, effective)
+    let bulk = spectrum === null ? null : this.#parts.bulk.fit(spectrum, effective, () => this.#table(active))
     if (matrix !== null && bulk !== null && bulk.escapes.length > this.#modes) {
       spectrum = solver.solve(matrix, active.length, bulk.escapes.length)
-      bulk = this.#parts.bulk.fit(spectrum, effective)
+      bulk = this.#parts.bulk.again(spectrum, effective)
     }
     if (bulk !== null) this.#modes = Math.max(2, bulk.escapes.length + 1)
     const reference = lagged === null ? null : this.#laggedReference(active)
@@ -207,6 +213,17 @@ export class Ensemble {
     return this.#matrix
   }
 
+  #table(active: Int32Array): FrameTable {
+    const n = active.length
+    const frames = this.#frames.length
+    const values = new Float64Array(n * frames)
+    for (let t = 0; t < frames; t++) {
+      const frame = this.#frames.values(frames - 1 - t)
+      for (let a = 0; a < n; a++) values[t * n + a] = frame[active[a]!] ?? 0
+    }
+    return { n, frames, values }
+  }
+
   #laggedReference(active: Int32Array): NonNullable<Observation['reference']> | null {
     const { lagged, solver, scale } = this.#parts
     if (lagged === null || !lagged.full) return null
@@ -237,6 +254,8 @@ export class Ensemble {
       maker: maker.snapshot(),
       window: window.snapshot(),
       lagged: lagged?.snapshot() ?? null,
+      frames: this.#frames.snapshot(),
+      bulk: this.#parts.bulk.snapshot(),
       spectra: this.#spectra?.snapshot() ?? null,
       watch: watch.snapshot(),
       modes: this.#modes,
@@ -250,6 +269,8 @@ export class Ensemble {
     maker.restore(s.maker)
     window.restore(s.window)
     lagged?.restore(s.lagged)
+    this.#frames.restore(s.frames)
+    this.#parts.bulk.restore(s.bulk)
     this.#spectra?.restore(s.spectra)
     watch.restore(s.watch)
     this.#modes = s.modes
@@ -262,6 +283,8 @@ export interface EnsembleSnapshot {
   readonly maker: unknown
   readonly window: unknown
   readonly lagged: unknown
+  readonly frames: RingSnapshot
+  readonly bulk: unknown
   readonly spectra: unknown
   readonly watch: unknown
   readonly modes: number

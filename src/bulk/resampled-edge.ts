@@ -24,10 +24,12 @@ export interface ResampledEdgeOptions {
   readonly seed: number
   /** a of an exponential memory; null for a boxcar. */
   readonly decay: number | null
+  /** How many draws count, the last ones; default 400. */
+  readonly drawsKept?: number
 }
 
 const fewestDraws = 20
-const mostDraws = 400
+const usualDrawsKept = 400
 /** Mean and standard deviation of the Tracy–Widom law, β = 1 (Bornemann 2010). */
 const lawMean = -1.206533574582
 const lawDeviation = Math.sqrt(1.607781034581)
@@ -35,7 +37,7 @@ const lawDeviation = Math.sqrt(1.607781034581)
 /**
  * The edge of the bulk from the data: each signal is shifted round by a random offset of its own, which keeps
  * its memory and its tails and loses what it shares with the others (circular shifts after Politis & Romano
- * 1994). One draw a call, so that a stream can spread them over its frames; the last 400 count. A change of n
+ * 1994). One draw a call, so that a stream can spread them over its frames; the last ones count. A change of n
  * starts afresh.
  */
 export class ResampledEdge {
@@ -65,7 +67,7 @@ export class ResampledEdge {
     this.#shift(table)
     this.#correlate(n, table.frames)
     this.#spectra[this.#next] = this.#solver.solve(this.#matrix, n, 0).values
-    this.#next = (this.#next + 1) % mostDraws
+    this.#next = (this.#next + 1) % (this.#options.drawsKept ?? usualDrawsKept)
   }
 
   get draws(): number {
@@ -128,14 +130,36 @@ export class ResampledEdge {
   #correlate(n: number, frames: number): void {
     if (this.#matrix.length !== n * n) this.#matrix = new Float64Array(n * n)
     const columns = this.#columns
-    for (let i = 0; i < n; i++) {
-      this.#matrix[i * n + i] = 1
-      for (let j = 0; j < i; j++) {
-        let inner = 0
-        for (let t = 0; t < frames; t++) inner += columns[i * frames + t]! * columns[j * frames + t]!
-        this.#matrix[i * n + j] = inner
+    const matrix = this.#matrix
+    for (let i = 0; i < n; i += 2) {
+      for (let j = 0; j <= i; j += 2) {
+        const lastRow = i + 1 < n
+        const lastColumn = j + 1 < n
+        const a = i * frames
+        const b = lastRow ? a + frames : a
+        const c = j * frames
+        const d = lastColumn ? c + frames : c
+        let ac = 0
+        let ad = 0
+        let bc = 0
+        let bd = 0
+        for (let t = 0; t < frames; t++) {
+          const x = columns[a + t]!
+          const y = columns[b + t]!
+          const u = columns[c + t]!
+          const v = columns[d + t]!
+          ac += x * u
+          ad += x * v
+          bc += y * u
+          bd += y * v
+        }
+        matrix[i * n + j] = ac
+        if (lastColumn) matrix[i * n + j + 1] = ad
+        if (lastRow) matrix[(i + 1) * n + j] = bc
+        if (lastRow && lastColumn) matrix[(i + 1) * n + j + 1] = bd
       }
     }
+    for (let i = 0; i < n; i++) matrix[i * n + i] = 1
   }
 
   /** A whole number below `limit`: mulberry32 (Tommy Ettinger, public domain; from memory). */
