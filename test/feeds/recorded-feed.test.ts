@@ -142,12 +142,11 @@ test.for([
   const path = await fileOf(content(40_000))
   const whole = await readAll(path, { format })
   expect(whole.readings).toHaveLength(40_000)
-  const feed = feedOf(path, { format })
-  const first: Collected = new Collected(feed, () => {
-    if (first.sizes.length === 1) setTimeout(() => first.stop())
+  let batches = 0
+  const first: Collected = new Collected(feedOf(path, { format }), () => {
+    if (++batches === 2) first.stop()
   })
-  await until('two batches', async () => first.sizes.length >= 2)
-  first.stop()
+  await until('two batches', async () => first.sizes.length === 2)
   const resumeAt = JSON.parse(JSON.stringify({ other: '7', ...first.position }))
   const rest = await readAll(path, { format }, { resumeAt })
   expect([...first.readings, ...rest.readings]).toEqual(whole.readings)
