@@ -46,20 +46,26 @@ export class EffectiveShare {
     this.#rows = []
   }
 
-  /** T_eff/T, in (0, 1]. */
+  /** T_eff/T, in (0, 1]. The sum ends where two lags in a row show nothing but noise. */
   get value(): number {
     let sum = 0
     let first = 0
     let last = 0
+    let quiet = 0
     for (let lag = 1; lag <= mostLags; lag++) {
       const product = this.#meanProduct(lag)
-      if (product === null || product < noise) return 1 / (1 + 2 * sum)
+      if (product === null) break
+      quiet = Math.abs(product) < noise ? quiet + 1 : 0
+      if (quiet === 2) break
       if (lag === 1) first = product
-      last = product
+      last = lag === mostLags ? product : 0
       sum += product
     }
-    const ratio = Math.min(0.999, (last / first) ** (1 / (mostLags - 1)))
-    return 1 / (1 + 2 * (sum + (last * ratio) / (1 - ratio)))
+    if (first > last && last > noise) {
+      const ratio = Math.min(0.999, (last / first) ** (1 / (mostLags - 1)))
+      sum += (last * ratio) / (1 - ratio)
+    }
+    return Math.min(1, 1 / (1 + 2 * Math.max(0, sum)))
   }
 
   /** Mean over the pairs of signals of ρ_i(lag) ρ_j(lag); null while too little is known. */

@@ -146,9 +146,7 @@ describe('frames and sessions', () => {
   })
 
   test('a last step that the close cuts short still belongs to its session', () => {
-    const feeder = new Feeder({ step: 7000, sessions: oslo })
-      .take(every('2026-03-27T15:19:40Z', 20, 1))
-      .end()
+    const feeder = new Feeder({ step: 7000, sessions: oslo }).take(every('2026-03-27T15:19:40Z', 20, 1)).end()
     const end = Math.ceil(utc('2026-03-27T15:20:00Z') / 7000) * 7000
     expect(feeder.table.at(-1)?.time).toBe(end)
     expect(feeder.table.at(-1)?.increments.a).toBeGreaterThan(0)

@@ -1,0 +1,183 @@
+import { describe, expect, test } from 'vitest'
+import { fitAutoregression } from '../../src/frames/autoregression.ts'
+import { EffectiveShare } from '../../src/frames/effective-share.ts'
+import { Memory } from '../../src/frames/memory.ts'
+import { Random } from '../support/random.ts'
+
+/** x_t = Σ φ_k x_{t−k} + e_t with standard normal e, after a run-in. */
+function autoregressive(random: Random, weights: readonly number[], length: number): Float64Array {
+  const x = new Float64Array(length + 200)
+  for (let t = 0; t < x.length; t++) {
+    x[t] = random.normal()
+    for (const [k, weight] of weights.entries()) x[t] = x[t]! + weight * (x[t - 1 - k] ?? 0)
+  }
+  return x.slice(200)
+}
+
+/** Lag-1 autocorrelation about zero. */
+function lagOne(x: readonly number[]): number {
+  let lagged = 0
+  let square = 0
+  for (let t = 1; t < x.length; t++) {
+    lagged += x[t]! * x[t - 1]!
+    square += x[t]! * x[t]!
+  }
+  return lagged / square
+}
+
+const everywhere = (n: number): Uint8Array => new Uint8Array(n).fill(1)
+
+describe('autoregression', () => {
+  test('Yule–Walker for order 1 is the lag-1 autocorrelation', () => {
+    const x = autoregressive(new Random(3), [0.6], 4000)
+    const mean = x.reduce((sum, value) => sum + value, 0) / x.length
+    let lagged = 0
+    let square = 0
+    for (let t = 0; t < x.length; t++) {
+      square += (x[t]! - mean) ** 2
+      if (t > 0) lagged += (x[t]! - mean) * (x[t - 1]! - mean)
+    }
+    const { weights } = fitAutoregression(x)
+    expect(weights).toHaveLength(1)
+    expect(weights[0]).toBeCloseTo(lagged / square, 10)
+    expect(weights[0]).toBeCloseTo(0.6, 1)
+  })
+
+  test('the order is found: independence, two lags, three lags', () => {
+    expect(fitAutoregression(autoregressive(new Random(5), [], 2000)).weights).toEqual([])
+    const two = fitAutoregression(autoregressive(new Random(6), [1.1, -0.5], 4000)).weights
+    expect(two).toHaveLength(2)
+    expect(two[0]).toBeCloseTo(1.1, 1)
+    expect(two[1]).toBeCloseTo(-0.5, 1)
+    expect(fitAutoregression(autoregressive(new Random(7), [0.3, 0, 0.4], 4000)).weights).toHaveLength(3)
+  })
+
+  test('missing values do not pull the coefficient to zero, nor does a flash print', () => {
+    const random = new Random(8)
+    const x = autoregressive(random, [0.7], 4000)
+    const holed = x.map((value) => (random.uniform() < 0.4 ? Number.NaN : value))
+    expect(fitAutoregression(holed).weights[0]).toBeGreaterThan(0.6)
+    const flashed = x.slice(0, 400)
+    flashed[100] = 200
+    expect(fitAutoregression(flashed).weights[0]).toBeGreaterThan(0.55)
+  })
+
+  test('is stationary whatever it is fitted to', () => {
+    const ramp = Float64Array.from({ length: 200 }, (_, t) => t * t)
+    const alternating = Float64Array.from({ length: 200 }, (_, t) => (t % 2 === 0 ? 1 : -1))
+    for (const x of [ramp, alternating, new Float64Array(200), new Float64Array(200).fill(Number.NaN)]) {
+      const { mean, weights } = fitAutoregression(x)
+      expect(Number.isFinite(mean)).toBe(true)
+      // The response to one shock dies out.
+      const response = [1]
+      for (let t = 1; t < 20_000; t++)
+        response.push(weights.reduce((sum, w, k) => sum + w * (response[t - 1 - k] ?? 0), 0))
+      expect(Math.abs(response.at(-1)!)).toBeLessThan(1e-3)
+    }
+  })
+})
+
+describe('prewhitening', () => {
+  test('takes the memory out of what comes after the fit', () => {
+    const x = autoregressive(new Random(21), [0.5, 0.2], 5000)
+    const memory = new Memory('prewhiten', 1000)
+    const residuals: number[] = []
+    for (const value of x) {
+      const row = Float64Array.of(value)
+      const present = everywhere(1)
+      memory.apply(row, present)
+      if (present[0] === 1) residuals.push(row[0]!)
+    }
+    expect(residuals).toHaveLength(4000)
+    // Two standard errors of an autocorrelation of 4000 independent values are 0.032.
+    expect(Math.abs(lagOne(residuals))).toBeLessThan(0.05)
+    expect(lagOne([...x])).toBeGreaterThan(0.5)
+  })
+
+  test('a signal is missing until it is fitted, and next to a missing value', () => {
+    const x = autoregressive(new Random(22), [0.8], 320)
+    const memory = new Memory('prewhiten', 300)
+    const seen: number[] = []
+    for (let t = 0; t < 320; t++) {
+      const present = Uint8Array.of(t === 310 ? 0 : 1)
+      const row = Float64Array.of(present[0] === 1 ? x[t]! : 0)
+      memory.apply(row, present)
+      seen.push(present[0]!)
+      if (present[0] === 0) expect(row[0]).toBe(0)
+    }
+    expect(seen.slice(0, 300).every((has) => has === 0)).toBe(true)
+    expect(seen.slice(300)).toEqual(Array.from({ length: 20 }, (_, k) => (k === 10 || k === 11 ? 0 : 1)))
+  })
+
+  test('does not look back over an interruption', () => {
+    const memory = new Memory('prewhiten', 300)
+    for (const value of autoregressive(new Random(23), [0.8], 300))
+      memory.apply(Float64Array.of(value), everywhere(1))
+    memory.interrupt()
+    const present = everywhere(1)
+    memory.apply(Float64Array.of(1), present)
+    expect(present[0]).toBe(0)
+    const next = everywhere(1)
+    memory.apply(Float64Array.of(1), next)
+    expect(next[0]).toBe(1)
+  })
+})
+
+describe('effective sample', () => {
+  const worth = (signals: readonly Float64Array[]): number => {
+    const share = new EffectiveShare()
+    for (let t = 0; t < signals[0]!.length; t++)
+      share.push(
+        Float64Array.from(signals, (x) => x[t]!),
+        everywhere(signals.length),
+      )
+    return share.value
+  }
+  const many = (n: number, weights: readonly number[], seed: number): Float64Array[] => {
+    const random = new Random(seed)
+    return Array.from({ length: n }, () => autoregressive(random, weights, 3000))
+  }
+
+  test('for a common AR(1) coefficient r it is (1 − r²)/(1 + r²) (Bartlett 1935)', () => {
+    for (const r of [0.3, 0.515, 0.8]) {
+      const expected = (1 - r * r) / (1 + r * r)
+      expect(Math.abs(worth(many(60, [r], 31)) / expected - 1)).toBeLessThan(0.08)
+    }
+    expect(worth(many(60, [], 32))).toBeGreaterThan(0.98)
+  })
+
+  test('the wind stations: r = 0.515 and T = 100 put the edge of 12 signals at 2.116 (check-values)', () => {
+    const edge = (share: number): number => (1 + Math.sqrt(12 / (100 * share))) ** 2
+    expect(edge((1 - 0.515 ** 2) / (1 + 0.515 ** 2))).toBeCloseTo(2.116, 3)
+    expect(edge(1)).toBeCloseTo(1.8128, 4)
+    expect(Math.abs(edge(worth(many(12, [0.515], 33))) - 2.116)).toBeLessThan(0.08)
+  })
+
+  test('signs count: what persists in one and alternates in the other cancels at every other lag', () => {
+    // Two signals with r, two with −r; over the 6 pairs ρρ is r^2k at even lags and −r^2k/3 at odd ones.
+    const r2 = 0.49
+    const expected = 1 / (1 + (2 * (r2 * r2 - r2 / 3)) / (1 - r2 * r2))
+    const share = worth([...many(2, [0.7], 34), ...many(2, [-0.7], 35)])
+    expect(Math.abs(share - expected)).toBeLessThan(0.1)
+    expect(Math.abs(worth(many(4, [0.7], 36)) - (1 - r2) / (1 + r2))).toBeLessThan(0.1)
+  })
+
+  test('goes on from a snapshot bit for bit', () => {
+    const signals = many(5, [0.6], 37)
+    const through = new EffectiveShare()
+    let other = new EffectiveShare()
+    for (let t = 0; t < 400; t++) {
+      const x = Float64Array.from(signals, (series) => series[t]!)
+      const present = Uint8Array.from(signals, (_, i) => ((t + i) % 7 === 0 ? 0 : 1))
+      through.push(x, present)
+      other.push(x, present)
+      if (t % 50 === 0) {
+        const snapshot = structuredClone(other.snapshot())
+        other = new EffectiveShare()
+        other.restore(snapshot)
+      }
+    }
+    expect(other.value).toBe(through.value)
+    expect(other.snapshot()).toEqual(through.snapshot())
+  })
+})
