@@ -157,7 +157,7 @@ export const errorCatalogue = {
   'store-missing': {
     sentence: 'There is no store yet.',
     remedy:
-      'Run `tautline watch` or `tautline replay` with the same settings first; store.path names the file.',
+      'Run `tautline watch` with the same settings first; store.path names the file.',
   },
   defect: {
     sentence: 'The monitor has a defect.',
