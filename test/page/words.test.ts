@@ -5,6 +5,7 @@ import {
   linearScale,
   linePath,
   niceAbove,
+  niceBelow,
   ratioScale,
   stepPath,
 } from '../../src/page/client/scale.ts'
@@ -201,6 +202,7 @@ describe('the drawings', () => {
 
   it('end a scale at a round number not below the largest value', () => {
     expect([0.2131, 1, 1.01, 7, 9, 123, 0].map(niceAbove)).toEqual([0.25, 1, 1.2, 8, 10, 150, 1])
+    expect([0.824, 1, 1.01, 7, 9.9, 123, 0].map(niceBelow)).toEqual([0.8, 1, 1, 6, 8, 120, 1])
   })
 
   it('make equal ratios equally far on a ratio scale', () => {

@@ -141,7 +141,9 @@ class Page {
     const name = new URLSearchParams(location.search).get('ensemble')
     if (name === null) return
     requestAnimationFrame(() =>
-      requestAnimationFrame(() => document.getElementById(anchorOf(name))?.scrollIntoView()),
+      requestAnimationFrame(() =>
+        document.getElementById(anchorOf(name))?.scrollIntoView({ behavior: 'instant' }),
+      ),
     )
   }
 }

@@ -22,7 +22,7 @@ export function ratioScale(
   { least, height }: { readonly least: readonly [number, number]; readonly height: number },
 ): Scale {
   const known = values.filter((v): v is number => v !== null && v > 0)
-  const low = Math.min(least[0], ...known)
+  const low = niceBelow(Math.min(least[0], ...known))
   const high = niceAbove(Math.max(least[1], ...known))
   const span = Math.log(high / low)
   return { low, high, at: (value) => place(Math.log(Math.max(value, low) / low) / span, height) }
@@ -31,11 +31,21 @@ export function ratioScale(
 const place = (part: number, height: number): number =>
   height * (1 - room - (1 - 2 * room) * Math.min(1, Math.max(0, part)))
 
-/** The next of 1, 1.2, 1.5, 2, 2.5, 3, 4, 5, 6, 8 times a power of ten. */
+const steps = [1, 1.2, 1.5, 2, 2.5, 3, 4, 5, 6, 8, 10]
+
+/** The next of 1, 1.2, 1.5, 2, 2.5, 3, 4, 5, 6, 8 times a power of ten; 1 where there is none. */
 export function niceAbove(value: number): number {
   if (!(value > 0)) return 1
   const ten = 10 ** Math.floor(Math.log10(value))
-  const step = [1, 1.2, 1.5, 2, 2.5, 3, 4, 5, 6, 8].find((s) => s * ten >= value * (1 - 1e-9)) ?? 10
+  const step = steps.find((s) => s * ten >= value * (1 - 1e-9)) ?? 10
+  return Number((step * ten).toPrecision(3))
+}
+
+/** The one before. */
+export function niceBelow(value: number): number {
+  if (!(value > 0)) return 1
+  const ten = 10 ** Math.floor(Math.log10(value))
+  const step = steps.findLast((s) => s * ten <= value * (1 + 1e-9)) ?? 1
   return Number((step * ten).toPrecision(3))
 }
 

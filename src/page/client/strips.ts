@@ -70,8 +70,8 @@ const plans: readonly StripPlan[] = [
     },
   },
   {
-    label: 'Distance from the reference',
-    note: 'W2, under its ceiling (shaded)',
+    label: 'Distance (W2)',
+    note: 'from the reference, under its ceiling (shaded)',
     lines: ['shade', 'main'],
     draw([, , , , , w2 = [], ceiling = []]) {
       const scale = linear([w2, ceiling], 0.5)
