@@ -11,6 +11,7 @@ import { referenceInState } from './compose.ts'
 import { ok } from './errors.ts'
 import { kafkaClient } from './feeds/kafka-client.ts'
 import { openFeed } from './feeds/open-feed.ts'
+import { structuredLog } from './observe/log.ts'
 
 const quiet = (): void => {}
 
@@ -18,12 +19,20 @@ await main({
   watch,
   replay,
   demo,
-  check: (options) =>
-    check(options, {
-      openFeed: (name, settings) => ok(openFeed(name, settings, { now: options.io.now, log: quiet })),
+  check: (options) => {
+    const { io, logLevel, read } = options
+    const log = structuredLog({
+      level: logLevel,
+      destination: io.stderr,
+      redact: (text) => read.secrets.redact(text),
+      now: io.now,
+    })
+    return check(options, {
+      openFeed: (name, settings) => ok(openFeed(name, settings, { now: io.now, log: quiet })),
       openRoute: (name, settings) =>
-        openRoute(name, settings, { log: quiet, kafka: (connection) => kafkaClient(connection, quiet) }),
-    }),
+        openRoute(name, settings, { log, kafka: (connection) => kafkaClient(connection, quiet) }),
+    })
+  },
   explain: (options) =>
     explain(options, { referenceOf: (kept) => referenceInState((kept as KeptEnsemble).state) }),
 })
