@@ -7,7 +7,8 @@ const pieceSize = 16 * 1024
 /**
  * Bytes of a gzip stream (RFC 1952), of any number of members. Where it is damaged or cut off, all that
  * zlib gave before is given, then `damage` says what is wrong; of a piece that turns out damaged at most the
- * last `outputSize` bytes before the damage are lost.
+ * last `outputSize` bytes before the damage are lost. zlib may take damaged bytes for good ones until it comes
+ * to the checksum at the end: what was read of a damaged member is not to be relied on.
  */
 export class GunzipSource implements ByteSource {
   readonly #inner: ByteSource
@@ -23,7 +24,7 @@ export class GunzipSource implements ByteSource {
     this.#inner = inner
     this.#gunzip = createGunzip({ chunkSize: outputSize })
     this.#gunzip.on('data', (data: Buffer) => this.#ready.push(data))
-    this.#gunzip.on('error', (error) => this.#end(error.message))
+    this.#gunzip.on('error', (error) => this.#end(damageOf(error)))
     this.#gunzip.on('end', () => this.#end(null))
   }
 
@@ -74,6 +75,11 @@ export class GunzipSource implements ByteSource {
     this.#wake()
   }
 }
+
+const damageOf = (error: Error & { code?: string }): string =>
+  error.code === 'Z_BUF_ERROR'
+    ? 'the compressed data end too early; all before this was read'
+    : `the compressed data are damaged (${error.message}); readings taken before this was noticed may be wrong`
 
 /** Output piece of zlib, the less the smaller the file, so that damage costs little: 512 bytes to 64 KiB. */
 const outputSizeFor = (compressed: number | null): number =>

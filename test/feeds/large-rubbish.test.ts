@@ -143,9 +143,13 @@ test('gzip damaged in the middle gives what came before, and one drop', async ()
   expect(cutOff.readings.length).toBeGreaterThan(45_000)
   expect(cutOff.readings.length).toBeLessThan(55_000)
   expect(cutOff.readings.every(isRight)).toBe(true)
+  expect(cutOff.quarantined[0]?.detail).toMatch(/end too early/)
   // zlib may take some damaged bytes for good ones before it notices: what it makes of them is text like any.
   const broken = await play('ndjson', cut(damaged, 65_536))
   expect(broken.dropped['bad-compression']).toBe(1)
+  expect(broken.quarantined.find(({ reason }) => reason === 'bad-compression')?.detail).toMatch(
+    /may be wrong/,
+  )
   expect(broken.readings.slice(0, 45_000).every(isRight)).toBe(true)
   expect(broken.readings.length).toBeLessThan(60_000)
 })
