@@ -14,7 +14,8 @@ const varianceDamping = 0.64
  * by second-order perturbation with delocalised vectors, to the mean (2λ₊/n)(λ₊|m| − 1), m the Stieltjes
  * transform at the edge, and to the variance 6λ₊²/(n(p + 2)). Both are of the law's own order in small
  * samples, and then the orders beyond count too: the first is damped by exp(−0.85 x²), x in standard
- * deviations, the second by 0.64, both fitted to simulations (test/bulk/reference/correlation-edge.md).
+ * deviations, the second by 0.64, both fitted to simulations (test/bulk/reference/correlation-edge.py), where
+ * the mean then lies within a tenth of a deviation, at p = 5 and n = 19 within a quarter.
  * Asymptotically nothing is left of either (Bao, Pan & Zhou 2012).
  *
  * `covariance` in units of the noise variance; `frames` effective; `steepness` is λ₊|m(λ₊)|.

@@ -14,7 +14,8 @@ const drawsKept = 100
 /**
  * The bulk of one window after another. While the law describes it, its edge is the law's; where it has not
  * for a run of frames, the edge resampled from the window's own frames takes its place, and the bulk says so
- * by its model. Draws are spread over the frames.
+ * by its model. Draws are spread over the frames; the first ones, with the common modes left in, only find out
+ * which modes there are, and are then drawn anew without them.
  */
 export class FittedEdge {
   readonly #fitter: BulkFitter
@@ -23,6 +24,9 @@ export class FittedEdge {
   /** Frames in a row that speak against the present choice. */
   #against = 0
   #frames = 0
+  /** Escapes by the resampled edge: what is projected off before a draw. */
+  #common = 0
+  #settled = false
 
   constructor(options: BulkOptions, solver: SymmetricSolver, seed = 1) {
     this.#fitter = new BulkFitter(options)
@@ -45,11 +49,18 @@ export class FittedEdge {
     if (!this.#poor) return byLaw
     this.#frames++
     const { draws } = this.#resampled
-    if (draws < drawsAtFirst || this.#frames % framesADraw === 0) this.#resampled.draw(table())
+    if (draws < drawsAtFirst || this.#frames % framesADraw === 0) {
+      const count = Math.min(this.#common, spectrum.modes)
+      this.#resampled.draw(table(), { count, vectors: spectrum.vectors })
+    }
     const limit = this.#resampled.limit
-    return limit === null || limit.spectrum.length !== spectrum.n
-      ? byLaw
-      : this.#fitter.fit(spectrum, effective, limit)
+    if (limit === null || limit.spectrum.length !== spectrum.n) return byLaw
+    const bulk = this.#fitter.fit(spectrum, effective, limit)
+    this.#common = bulk.escapes.length
+    if (this.#settled || this.#common === 0) return bulk
+    this.#settled = true
+    this.#resampled.clear()
+    return byLaw
   }
 
   /** The same fit of a spectrum with more vectors, without a further step in time. */
@@ -64,6 +75,8 @@ export class FittedEdge {
       poor: this.#poor,
       against: this.#against,
       frames: this.#frames,
+      common: this.#common,
+      settled: this.#settled,
     } satisfies FittedEdgeSnapshot
   }
 
@@ -73,6 +86,8 @@ export class FittedEdge {
     this.#poor = s.poor
     this.#against = s.against
     this.#frames = s.frames
+    this.#common = s.common
+    this.#settled = s.settled
   }
 }
 
@@ -81,4 +96,6 @@ interface FittedEdgeSnapshot {
   readonly poor: boolean
   readonly against: number
   readonly frames: number
+  readonly common: number
+  readonly settled: boolean
 }

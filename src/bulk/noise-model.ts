@@ -1,6 +1,6 @@
 import { correlationCentring } from './correlation-centring.ts'
 import type { BulkLaw } from './edges.ts'
-import { exponentialCentring } from './exponential-limit.ts'
+import { exponentialCentring } from './exponential-centring.ts'
 import { exponentialLaw } from './exponential-memory.ts'
 import { type Centring, correctedCentring } from './johnstone.ts'
 import { marchenkoPasturLaw } from './marchenko-pastur.ts'

@@ -28,6 +28,15 @@ export interface ResampledEdgeOptions {
   readonly drawsKept?: number
 }
 
+/** The first `count` rows of `vectors`, orthonormal, n entries each. */
+export interface CommonModes {
+  readonly count: number
+  readonly vectors: Float64Array
+}
+
+const none: CommonModes = { count: 0, vectors: new Float64Array(0) }
+/** A variance below this part of the squared mean is rounding of a constant signal. */
+const rounding = 1e-20
 const fewestDraws = 20
 const usualDrawsKept = 400
 /** Mean and standard deviation of the Tracy–Widom law, β = 1 (Bornemann 2010). */
@@ -47,6 +56,7 @@ export class ResampledEdge {
   #next = 0
   #state: number
   #columns = new Float64Array(0)
+  #scratch = new Float64Array(0)
   #matrix = new Float64Array(0)
 
   /** @throws RangeError when the level is not between 0 and 1 */
@@ -57,17 +67,28 @@ export class ResampledEdge {
     this.#state = options.seed >>> 0
   }
 
-  /** Takes one draw from the frames of the present window, at least two of them. */
-  draw(table: FrameTable): void {
-    const { n } = table
-    if (this.#spectra.length > 0 && this.#spectra[0]!.length !== n) {
-      this.#spectra = []
-      this.#next = 0
-    }
-    this.#shift(table)
-    this.#correlate(n, table.frames)
+  /**
+   * Takes one draw from the frames of the present window, at least two of them. `common` modes are projected
+   * off every frame before: a strong one left in every signal would meet itself again, shifted, and raise the
+   * limit well above that of noise. Give what escapes by this edge, not by the law, whose false escapes would
+   * take the memory away that is to be measured.
+   */
+  draw(table: FrameTable, common: CommonModes = none): void {
+    const { n, frames } = table
+    if (this.#spectra.length > 0 && this.#spectra[0]!.length !== n) this.clear()
+    this.#load(table)
+    this.#standardise(n, frames, false)
+    this.#projectOff(n, frames, common.count, common.vectors)
+    this.#standardise(n, frames, true)
+    this.#correlate(n, frames)
     this.#spectra[this.#next] = this.#solver.solve(this.#matrix, n, 0).values
     this.#next = (this.#next + 1) % (this.#options.drawsKept ?? usualDrawsKept)
+  }
+
+  /** Forgets all draws. */
+  clear(): void {
+    this.#spectra = []
+    this.#next = 0
   }
 
   get draws(): number {
@@ -97,33 +118,58 @@ export class ResampledEdge {
     }
   }
 
-  /** Columns of the table, weighted, centred, brought to norm 1 and shifted round. */
-  #shift({ n, frames, values }: FrameTable): void {
+  #load({ n, frames, values }: FrameTable): void {
     if (this.#columns.length < n * frames) this.#columns = new Float64Array(n * frames)
-    const columns = this.#columns
+    for (let t = 0; t < frames; t++) {
+      for (let i = 0; i < n; i++) this.#columns[i * frames + t] = values[t * n + i]!
+    }
+  }
+
+  /** Brings every signal to weighted mean 0 and variance 1; with `shifted` also turns it round and weights it. */
+  #standardise(n: number, frames: number, shifted: boolean): void {
     const decay = this.#options.decay ?? 1
+    if (this.#scratch.length < frames) this.#scratch = new Float64Array(frames)
+    const turned = this.#scratch
     for (let i = 0; i < n; i++) {
-      const shift = this.#below(frames)
+      const shift = shifted ? this.#below(frames) : 0
       const start = i * frames
-      for (let t = 0; t < frames; t++) columns[start + ((t + shift) % frames)] = values[t * n + i]!
       let weight = 1
       let total = 0
       let sum = 0
+      let squares = 0
       for (let t = frames - 1; t >= 0; t--) {
+        const x = this.#columns[start + ((t + shift) % frames)]!
+        turned[t] = x
         total += weight
-        sum += weight * columns[start + t]!
+        sum += weight * x
         weight *= decay
       }
-      let squares = 0
+      const mean = sum / total
       weight = 1
       for (let t = frames - 1; t >= 0; t--) {
-        const x = (columns[start + t]! - sum / total) * Math.sqrt(weight)
-        columns[start + t] = x
-        squares += x * x
+        squares += weight * (turned[t]! - mean) ** 2
         weight *= decay
       }
-      const scale = squares > 0 ? 1 / Math.sqrt(squares) : 0
-      for (let t = 0; t < frames; t++) columns[start + t] = columns[start + t]! * scale
+      const varies = squares > rounding * total * mean * mean
+      weight = varies ? 1 / Math.sqrt(shifted ? squares : squares / total) : 0
+      const root = shifted ? Math.sqrt(decay) : 1
+      for (let t = frames - 1; t >= 0; t--) {
+        this.#columns[start + t] = (turned[t]! - mean) * weight
+        weight *= root
+      }
+    }
+  }
+
+  #projectOff(n: number, frames: number, count: number, vectors: Float64Array): void {
+    for (let k = 0; k < count; k++) {
+      for (let t = 0; t < frames; t++) {
+        let inner = 0
+        for (let i = 0; i < n; i++) inner += vectors[k * n + i]! * this.#columns[i * frames + t]!
+        for (let i = 0; i < n; i++) {
+          const at = i * frames + t
+          this.#columns[at] = this.#columns[at]! - inner * vectors[k * n + i]!
+        }
+      }
     }
   }
 

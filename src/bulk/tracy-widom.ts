@@ -64,8 +64,8 @@ function logOddsAt(s: number): number {
   )
 }
 
-/** −ln(1 − F1(s)) for large s but for a constant: 1 − F1 ~ exp(−⅔ s^{3/2})/(4√π s^{3/2}). */
-const upperTail = (s: number): number => (2 / 3) * s ** 1.5 + 1.5 * Math.log(s)
+/** −ln(1 − F1(s)) for large s but for a constant: 1 − F1 ~ exp(−⅔ s^{3/2})/(4√π s^{3/4}). */
+const upperTail = (s: number): number => (2 / 3) * s ** 1.5 + 0.75 * Math.log(s)
 
 function whereLogOdds(wanted: number): number {
   let low = tableStart

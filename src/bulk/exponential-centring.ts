@@ -1,6 +1,5 @@
 import { exponentialEdges } from './exponential-memory.ts'
 import type { Centring } from './johnstone.ts'
-import { tracyWidomUpper } from './tracy-widom.ts'
 
 /**
  * Where the largest noise eigenvalue lies under an exponential memory of load q = N(1 − a), variance 1, for
@@ -20,10 +19,4 @@ export function exponentialCentring(p: number, load: number): Centring {
     centre: upper - (upper * excess) / (4 * p),
     scale: upper * Math.cbrt((load * load) / (2 * p * p * excess)),
   }
-}
-
-/** The limit that the largest noise eigenvalue exceeds with probability `level`; see `noiseLimit`. */
-export function exponentialLimit(p: number, load: number, level: number): number {
-  const { centre, scale } = exponentialCentring(p, load)
-  return centre + scale * tracyWidomUpper(level)
 }
