@@ -14,9 +14,10 @@ const varianceDamping = 0.64
  * by second-order perturbation with delocalised vectors, to the mean (2λ₊/n)(λ₊|m| − 1), m the Stieltjes
  * transform at the edge, and to the variance 6λ₊²/(n(p + 2)). Both are of the law's own order in small
  * samples, and then the orders beyond count too: the first is damped by exp(−0.85 x²), x in standard
- * deviations, the second by 0.64, both fitted to simulations (test/bulk/reference/correlation-edge.py), where
- * the mean then lies within a tenth of a deviation, at p = 5 and n = 19 within a quarter.
- * Asymptotically nothing is left of either (Bao, Pan & Zhou 2012).
+ * deviations, the second by 0.64, both fitted to simulations (test/bulk/reference/correlation-edge.py): from
+ * p = 10 on the mean lies within a tenth of a deviation and the deviation within 8 %. For p = 3, T = 20 the limit
+ * of 5 % is passed by 3.0 %, for p = 5, T = 20 by 4.7 %, for p = 20, T = 1000 by 5.0 % (20,000 and 2,000 draws).
+ * Asymptotically nothing is left of either correction (Bao, Pan & Zhou 2012).
  *
  * `covariance` in units of the noise variance; `frames` effective; `steepness` is λ₊|m(λ₊)|.
  */
