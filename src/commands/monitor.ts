@@ -9,6 +9,7 @@ import { summaryRecord } from '../observe/records.ts'
 import { PageState } from '../page/page-state.ts'
 import { type PageServer, pageServer } from '../page/server.ts'
 import { type Outcome, pipeline } from '../pipeline.ts'
+import type { Carrier, Transition } from '../regime/regime.ts'
 import type { Settings } from '../settings/schema.ts'
 import type { Store } from '../store/store.ts'
 import { Alerting } from './alerting.ts'
@@ -20,6 +21,8 @@ import { Totals } from './totals.ts'
 
 const beatMs = 250
 const retryStoreMs = 1000
+/** Entries of the journal that the page gives of an ensemble. */
+const journalShown = 200
 
 export interface MonitorParts {
   readonly settings: Settings
@@ -49,6 +52,8 @@ export class Monitor {
   readonly #alerting: Alerting
   readonly #totals = new Totals()
   readonly #titles: ReadonlyMap<string, string>
+  /** The signals that lead each ensemble's leading mode now. */
+  readonly #leaders = new Map<string, readonly Carrier[]>()
 
   constructor(parts: MonitorParts) {
     const { settings, feeds, ensembles, routes, version } = parts
@@ -80,6 +85,10 @@ export class Monitor {
       },
     })
     for (const alert of [...this.#alerting.alerts].reverse()) this.#state.alert(alert)
+    for (const { name } of ensembles) {
+      const [last] = parts.store.readJournal({ ensemble: name, kind: 'transition', limit: 1 })
+      if (last !== undefined) this.#state.transition(name, last.body as Transition)
+    }
   }
 
   async run(): Promise<void> {
@@ -111,16 +120,18 @@ export class Monitor {
 
   async #open(): Promise<PageServer> {
     const { settings, store, now, listening, log } = this.#parts
-    const { listen, token } = settings.page
+    const { listen, token, url } = settings.page
     const page = await pageServer({
       listen,
       ...(token === undefined ? {} : { token }),
+      ...(url === undefined ? {} : { url }),
       state: this.#state,
       metrics: () => this.#metrics.text(),
       live: () => spoken(this.#health.live(now())),
       ready: () => spoken(this.#health.ready(now())),
       quarantine: () => store.readQuarantine(200),
       alert: (id) => store.alert(id),
+      regimes: (ensemble) => store.readJournal({ ensemble, limit: journalShown }),
       now,
     })
     log('info', 'The page is up.', { url: page.url })
@@ -141,7 +152,7 @@ export class Monitor {
     const at = now()
     for (const one of judged) {
       this.#metrics.judged(one, at)
-      this.#metrics.carriers(one.ensemble, one.verdict.leaders)
+      this.#leaders.set(one.ensemble, one.verdict.leaders)
       this.#state.judged(one)
     }
     for (const { ensemble, finding } of findings) this.#state.finding(ensemble, finding)
@@ -156,6 +167,7 @@ export class Monitor {
     this.#alerting.beat(now)
     this.#metrics.waiting(store.waiting())
     for (const ensemble of ensembles) this.#metrics.conditions(ensemble.name, ensemble.conditions)
+    for (const [ensemble, leaders] of this.#leaders) this.#metrics.carriers(ensemble, leaders)
     if (checkpoints === null) return
     if (now - checkpoints.savedAt >= settings.store.every) await this.#save()
     this.#metrics.checkpointAge(Math.max(0, now - checkpoints.savedAt) / 1000)
