@@ -155,7 +155,6 @@ export class Aligner {
   /** Is the step closed, or would be had anything waited for it? */
   #isPast(key: number): boolean {
     if (key <= this.#closed) return true
-    if (key === Number.POSITIVE_INFINITY) return false
     return this.#options.step === 'row' ? key < this.#watermark : this.#end(key) <= this.#watermark
   }
 

@@ -38,7 +38,6 @@ const columns = [
   'duplicates', // exponential means of the two shares
   'disorder',
   'silent', // frames in a row without a fresh value
-  'silentSince', // end of the last frame with one
   'clipped', // exponential mean share of clipped entries, short and long
   'clippedLong',
 ] as const
@@ -106,7 +105,6 @@ export class Hygiene {
       if ((stuck[place] === 1) !== this.#book.isOpen('stuck', place)) this.#turnStuck(levels, place)
       if (fresh[place] === 1) {
         this.#column.silent[place] = 0
-        this.#column.silentSince[place] = time
         if (this.#book.isOpen('stale', place)) this.#book.end('stale', place, time)
       } else this.#silent(levels, place)
       if (this.#column.arrivals[place]! > 0) this.#countDisorder(place, time)
@@ -172,12 +170,11 @@ export class Hygiene {
 
   /** A frame without a fresh value. Time counts from the last reading, or from the beginning of the session. */
   #silent({ time, valueTime, follows }: Levels, place: number): void {
-    const { silent, silentSince } = this.#column
+    const { silent } = this.#column
     silent[place] = follows === 'in-another-session' ? 1 : silent[place]! + 1
     if (this.#book.isOpen('stale', place)) return
     const { staleAfter } = this.#options
-    const seen = Number.isFinite(valueTime[place]!)
-    const from = seen ? (staleAfter === null ? silentSince[place]! : valueTime[place]!) : this.#begun
+    const from = Number.isFinite(valueTime[place]!) ? valueTime[place]! : this.#begun
     if (staleAfter === null ? silent[place]! >= staleRows : time - from >= staleAfter)
       this.#begin('stale', place, from, 'no reading that is young enough')
   }

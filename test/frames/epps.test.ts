@@ -123,4 +123,14 @@ describe('the Epps effect', () => {
       )
     expect(check.warning).toBeNull()
   })
+
+  test('a longer step in which a signal was missing is none for that signal', () => {
+    const random = new Random(44)
+    const check = new EppsCheck()
+    for (let t = 0; t < 4000; t++) {
+      const x = random.normal()
+      check.push(Float64Array.of(x, x), Uint8Array.of(1, t % 6 === 5 ? 0 : 1))
+    }
+    expect(check.comparison).toBeNull()
+  })
 })

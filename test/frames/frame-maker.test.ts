@@ -77,9 +77,7 @@ describe('a snapshot goes on bit for bit', () => {
     const half = readings.length >> 1
     const through = new Feeder().take(readings).end()
     const first = new Feeder().take(readings.slice(0, half))
-    const other = new Feeder().take(
-      wildReadings(8, 50).map(([name, time, v]): Reading => [`x${name}`, time, v]),
-    )
+    const other = new Feeder().take([...names].reverse().map((name): Reading => [name, start, 1]))
     other.maker.restore(structuredClone(first.maker.snapshot()))
     other.frames.length = 0
     other.take(readings.slice(half)).end()
@@ -232,6 +230,27 @@ describe('sources', () => {
     expect(feeder.dropped).toEqual({ late: 1 })
   })
 
+  test('which source ends last makes no difference, though one goes on with signals that nobody watches', () => {
+    const outcomes = [
+      ['p', 'q'],
+      ['q', 'p'],
+    ].map((order) => {
+      const feeder = new Feeder({ signals: { names: ['a'] } })
+      feeder.note(feeder.maker.assign(['p', 'q'], present))
+      feeder.take(
+        [
+          ['a', start, 1],
+          ['a', start + second, 2],
+        ],
+        'p',
+      )
+      feeder.take([['other', start + 8 * second, 1]], 'q')
+      return feeder.end(...order).frames.map(({ time }) => (time - start) / second)
+    })
+    expect(outcomes[0]).toEqual(outcomes[1])
+    expect(outcomes[0]).toEqual([2, 3, 4, 5, 6, 7])
+  })
+
   test('readings that come after all sources had ended are taken up again after assignment', () => {
     const feeder = new Feeder({ lateness: 2 * second })
     feeder
@@ -261,6 +280,18 @@ describe('frames', () => {
     const feeder = new Feeder({ truncateAt: 5 }).take(readings).end()
     expect(feeder.frames[0]).toMatchObject({ index: 0, time: start + 22 * second, missing: 0 })
     expect(feeder.frames).toHaveLength(39)
+  })
+
+  test('the first frame has a scale for at least half of the signals that move', () => {
+    const random = new Random(3)
+    const readings = Array.from({ length: 60 }, (_, k) =>
+      names
+        .filter((name) => name === 'a' || k >= 15)
+        .map((name): Reading => [name, start + k * second, random.normal()]),
+    ).flat()
+    const feeder = new Feeder({ truncateAt: 5 }).take(readings).end()
+    // a alone would be ready in the step that ends at 22 s; the others begin 15 s later.
+    expect(feeder.frames[0]).toMatchObject({ index: 0, time: start + 37 * second, missing: 0 })
   })
 
   test('level is taken from its own exponential mean before the step', () => {

@@ -25,6 +25,7 @@ function lagOne(x: readonly number[]): number {
   return lagged / square
 }
 
+let held = new Float64Array(8)
 const everywhere = (n: number): Uint8Array => new Uint8Array(n).fill(1)
 
 describe('autoregression', () => {
@@ -160,6 +161,27 @@ describe('effective sample', () => {
     const share = worth([...many(2, [0.7], 34), ...many(2, [-0.7], 35)])
     expect(Math.abs(share - expected)).toBeLessThan(0.1)
     expect(Math.abs(worth(many(4, [0.7], 36)) - (1 - r2) / (1 + r2))).toBeLessThan(0.1)
+  })
+
+  test('a memory that shows at the second lag only is seen as well', () => {
+    // ρ is r^k at lag 2k and nothing between: (1 − r²)/(1 + r²) once more.
+    expect(Math.abs(worth(many(12, [0, 0.7], 38)) - 0.51 / 1.49)).toBeLessThan(0.08)
+  })
+
+  test('values on both sides of an interruption are no neighbours', () => {
+    const [one, other] = [new Memory('effective-sample', 0), new Memory('effective-sample', 0)]
+    const random = new Random(39)
+    for (let t = 0; t < 2000; t++) {
+      if (t % 2 === 0) other.interrupt()
+      // Pairs of equal values: every second neighbour is the same value, the others are independent.
+      const x = t % 2 === 0 ? Float64Array.from({ length: 8 }, () => random.normal()) : held
+      held = x
+      one.apply(x.slice(), everywhere(8))
+      other.apply(x.slice(), everywhere(8))
+    }
+    // Lag 1 is ρ = 1/2 over all neighbours, and 1 over those that are left.
+    expect(one.effectiveShare).toBeCloseTo(1 / (1 + 2 / 4), 1)
+    expect(other.effectiveShare).toBeCloseTo(1 / (1 + 2), 2)
   })
 
   test('goes on from a snapshot bit for bit', () => {

@@ -78,7 +78,7 @@ describe('watermarks', () => {
     const hourLater = 3_600_000
     after.assign('a', hourLater)
     after.assign('b', hourLater)
-    after.source('a', hourLater).latest = 500
+    Object.assign(after.source('a', hourLater), { latest: 500, spoke: hourLater + idleAfter })
     expect(after.reached(hourLater + idleAfter)).toBe(90)
   })
 })
