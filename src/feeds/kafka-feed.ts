@@ -3,7 +3,7 @@ import { TautlineError } from '../errors.ts'
 import type { FeedSettings, FormatSettings } from '../settings/schema.ts'
 import type { FeedContext } from './context.ts'
 import type { Feed, FeedEvent, Position } from './feed.ts'
-import { kafkaConfig } from './kafka-client.ts'
+import { kafkaConfig } from './kafka-config.ts'
 import { loginRefusal, messageOf } from './kafka-errors.ts'
 import { kafkaLibrary } from './kafka-library.ts'
 import { KafkaRun } from './kafka-run.ts'
@@ -83,6 +83,6 @@ export class KafkaFeed implements Feed {
   }
 
   #client() {
-    return new kafkaLibrary.Kafka(kafkaConfig(this.#recording.kafka, this.#context.log))
+    return new (kafkaLibrary().Kafka)(kafkaConfig(this.#recording.kafka, this.#context.log))
   }
 }

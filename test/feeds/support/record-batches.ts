@@ -1,9 +1,9 @@
 import { createRequire } from 'node:module'
-import '../../../src/feeds/kafka-library.ts'
-import type { PackedMessage } from '../../../src/feeds/kafka-library.ts'
+import { kafkaLibrary, type PackedMessage } from '../../../src/feeds/kafka-library.ts'
 
 // The encoder of kafkajs, and the decoder that src/feeds/kafka-library.ts put in place of its own.
 const require = createRequire(import.meta.url)
+kafkaLibrary()
 const { RecordBatch } = require('kafkajs/src/protocol/recordBatch/v0/index.js')
 const Record = require('kafkajs/src/protocol/recordBatch/record/v0/index.js')
 const Long = require('kafkajs/src/utils/long.js')
