@@ -156,8 +156,7 @@ export const errorCatalogue = {
   },
   'store-missing': {
     sentence: 'There is no store yet.',
-    remedy:
-      'Run `tautline watch` with the same settings first; store.path names the file.',
+    remedy: 'Run `tautline watch` with the same settings first; store.path names the file.',
   },
   defect: {
     sentence: 'The monitor has a defect.',
