@@ -130,6 +130,15 @@ export class Ensemble {
     }
   }
 
+  /** Lets go of sources whose feed is not among these: after a restart with other settings. */
+  keepFeeds(feeds: ReadonlySet<string>, now: number): void {
+    const { maker } = this.#parts
+    const gone = [...maker.leads(now)]
+      .map(([source]) => source)
+      .filter((source) => !feeds.has(source.split('/')[0]!))
+    if (gone.length > 0) maker.revoke(gone, now)
+  }
+
   /** How many signals are well, and how many have which finding; each counts once. */
   get conditions(): Readonly<Record<SignalCondition, number>> {
     return this.#parts.maker.conditions

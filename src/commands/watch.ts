@@ -34,6 +34,8 @@ export async function watch(options: WatchOptions): Promise<ExitStatus> {
     const ensembles = openEnsembles(settings)
     const checkpoints = new Checkpoints(store, settings, io.now())
     const positions = checkpoints.restore(ensembles, log)
+    const named = new Set(Object.keys(settings.feeds))
+    for (const ensemble of ensembles) ensemble.keepFeeds(named, io.now())
     const feeds = Object.entries(settings.feeds).map(([name, feed]) => {
       const resumeAt = positions.get(name)
       return openFeed(name, feed, { now: io.now, log, ...(resumeAt === undefined ? {} : { resumeAt }) })
