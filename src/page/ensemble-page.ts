@@ -176,16 +176,20 @@ function pointOf({ time, share, leading, bulk, verdict }: Judged): Point {
   ]
 }
 
-const shiftOf = (shift: Shift): ShiftView => ({
-  number: shift.number,
-  kind: shift.kind,
-  start: shift.start,
-  startFrom: shift.startFrom,
-  startTo: shift.startTo,
-  confirmed: shift.confirmed,
-  carriers: barsOf(shift.carriers),
-  remainder: figure(shift.remainder),
-})
+function shiftOf(shift: Shift): ShiftView {
+  const carriers = barsOf(shift.carriers)
+  const sumOf = (bars: readonly Bar[]) => bars.reduce((sum, { share }) => sum + share, 0)
+  return {
+    number: shift.number,
+    kind: shift.kind,
+    start: shift.start,
+    startFrom: shift.startFrom,
+    startTo: shift.startTo,
+    confirmed: shift.confirmed,
+    carriers,
+    remainder: figure(shift.remainder + sumOf(shift.carriers) - sumOf(carriers), 4),
+  }
+}
 
 /** The largest by size, at most ten; a share that is not finite is left out. */
 const barsOf = (bars: readonly Bar[]): readonly Bar[] =>

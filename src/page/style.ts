@@ -74,6 +74,9 @@ h2 .shape { margin-left: 0.25rem; }
 .bars .against { background: none; border: 1px solid var(--line); }
 .shifted .bars .bar { background: var(--shift); }
 .shifted .bars .against { background: none; border-color: var(--shift); }
+.bars .rest .name { color: var(--soft); font-style: italic; }
+.bars .rest .bar, .shifted .bars .rest .bar { background: var(--faint); }
+.bars .rest .against, .shifted .bars .rest .against { background: none; border-color: var(--faint); }
 
 details { margin-top: 0.75rem; }
 summary { cursor: pointer; font: 0.8125rem/1.6 var(--sans); color: var(--soft); }

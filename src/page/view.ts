@@ -120,6 +120,7 @@ export interface ShiftView {
   readonly startTo: number
   readonly confirmed: number
   readonly carriers: readonly Bar[]
+  /** What makes 1 with the carriers shown: the other signals, and what first order does not explain. */
   readonly remainder: number | null
 }
 

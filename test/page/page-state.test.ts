@@ -71,6 +71,8 @@ describe('the state that the page shows', () => {
     const shares = desk(state).shift!.carriers.map(({ share }) => Math.abs(share))
     expect(shares.length).toBe(10)
     expect([...shares].sort((a, b) => b - a)).toEqual(shares)
+    const { carriers, remainder } = desk(state).shift!
+    expect(carriers.reduce((sum, { share }) => sum + share, remainder!)).toBeCloseTo(1, 3)
     state.judged(judged(861, { verdict: { state: 'steady', ended: 3 } }))
     expect(desk(state).shift).toBeNull()
   })

@@ -78,6 +78,7 @@ describe('the page in a browser', () => {
       'Why shifted: Shift 3 (strength): leading-share is at 128 % of its limit for 15 frames',
     )
     expect(desk).toMatch(/Who carries shift 3 ?QUAY ?16 % ?MAST ?8\.0 %/)
+    expect(desk).toMatch(/WINCH ?1\.6 % ?the rest ?58 %/)
     expect(await textOf(tab, '#ensemble-station')).toContain('left out: PT-103 (constant)')
     expect(await textOf(tab, '#alerts')).toMatch(
       /unacknowledged Northern desk: the same signals have moved together/,

@@ -1,4 +1,5 @@
-import type { Bar, EnsembleView } from '../view.ts'
+import type { EnsembleView } from '../view.ts'
+import { carrierBars } from './carrier-bars.ts'
 import { el, KeyedList, say, set } from './dom.ts'
 import { shape } from './shape.ts'
 import { strips } from './strips.ts'
@@ -101,45 +102,4 @@ const sentenceCase = (text: string): string => text.charAt(0).toUpperCase() + te
 function textItem<T>(words: (item: T) => string): Part<T, HTMLLIElement> {
   const node = el('li')
   return { node, update: (item) => say(node, words(item)) }
-}
-
-/** Who carries the shift that stands, else who leads the present leading mode. */
-function carrierBars(): Part<EnsembleView, HTMLElement> {
-  const [heading, rows, rest] = [el('h3'), el('ol', { class: 'bars' }), el('p', { class: 'quiet' })]
-  let longest = 1
-  const list = new KeyedList<Bar, HTMLLIElement>(
-    rows,
-    ({ signal }) => signal,
-    () => {
-      const [name, bar, share] = [el('span', { class: 'name' }), el('span', { class: 'bar' }), el('span')]
-      return {
-        node: el('li', {}, name, el('span', { class: 'track' }, bar), share),
-        update({ signal, share: part }) {
-          say(name, signal)
-          say(share, percent(part))
-          const wide = `${((100 * Math.abs(part)) / longest).toFixed(1)}%`
-          if (bar.style.width !== wide) bar.style.width = wide
-          bar.classList.toggle('against', part < 0)
-        },
-      }
-    },
-  )
-  const node = el('div', { class: 'carriers' }, heading, rows, rest)
-  return {
-    node,
-    update({ shift, leaders }) {
-      const bars = shift?.carriers ?? leaders
-      node.hidden = bars.length === 0
-      longest = Math.max(...bars.map(({ share }) => Math.abs(share)), 1e-9)
-      say(heading, shift === null ? 'Who leads the leading mode' : `Who carries shift ${shift.number}`)
-      list.update(bars)
-      const against = bars.some(({ share }) => share < 0) ? ' A hollow bar moves against the change.' : ''
-      say(
-        rest,
-        shift === null
-          ? 'Squared loadings; together over all signals they make 100 %.'
-          : `Parts of the movement of the mode; the remainder beyond the first order is ${percent(shift.remainder)}.${against}`,
-      )
-    },
-  }
 }

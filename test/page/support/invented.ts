@@ -96,6 +96,8 @@ export const transition = (frame: number, over: Partial<Transition> = {}): Trans
   ...over,
 })
 
+const carriers = names.map((signal, k) => ({ signal, share: k === 7 ? -0.03 : 0.16 / (k + 1) }))
+
 export const shiftAt = (frame: number, over: Partial<Shift> = {}): Shift =>
   inventedShift({
     start: timeOf(frame - 40),
@@ -104,7 +106,8 @@ export const shiftAt = (frame: number, over: Partial<Shift> = {}): Shift =>
     confirmed: timeOf(frame),
     frame,
     number: 3,
-    carriers: names.map((signal, k) => ({ signal, share: k === 7 ? -0.03 : 0.16 / (k + 1) })),
+    carriers,
+    remainder: 1 - carriers.reduce((sum, { share }) => sum + share, 0),
     ...over,
   })
 
