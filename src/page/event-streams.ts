@@ -14,7 +14,7 @@ export interface StreamLimits {
   /** Changes kept for those that come back, and their characters together. */
   readonly kept: number
   readonly keptCharacters: number
-  /** Bytes that a reader may leave lying before it is let go; it may come back. */
+  /** Bytes that a reader may leave lying, besides its two largest events, before it is let go; it may come back. */
   readonly waiting: number
 }
 
@@ -36,7 +36,8 @@ const retryMs = 1000
 export class EventStreams {
   readonly #run: string
   readonly #limits: StreamLimits
-  readonly #clients = new Map<StreamOut, { readonly waiting: number }>()
+  /** Each reader with the length of the largest event that it was sent. */
+  readonly #clients = new Map<StreamOut, number>()
   #kept: { readonly number: number; readonly text: string }[] = []
   #keptCharacters = 0
   #number = 0
@@ -65,8 +66,7 @@ export class EventStreams {
   open(out: StreamOut, lastId: string | null, view: () => PageView): void {
     const missed = this.#since(lastId)
     const first = missed ?? event('state', view(), `${this.#run}-${this.#number}`)
-    // A state larger than the allowance must not end the stream that it begins.
-    this.#clients.set(out, { waiting: this.#limits.waiting + 2 * first.length })
+    this.#clients.set(out, 0)
     this.#write(out, `retry: ${retryMs}\n\n${first}`)
   }
 
@@ -96,8 +96,11 @@ export class EventStreams {
   }
 
   #write(out: StreamOut, text: string): void {
+    // An event larger than the allowance must not end the stream of one that keeps up.
+    const largest = Math.max(text.length, this.#clients.get(out) ?? 0)
+    this.#clients.set(out, largest)
     out.write(text)
-    if (out.writableLength <= (this.#clients.get(out)?.waiting ?? 0)) return
+    if (out.writableLength <= this.#limits.waiting + 2 * largest) return
     this.#clients.delete(out)
     this.#letGo++
     out.destroy()

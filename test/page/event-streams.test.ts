@@ -89,11 +89,23 @@ describe('the stream of events', () => {
     slow.takes = false
     for (let k = 1; k <= 200; k++) streams.publish(change(k, 'x'.repeat(500)))
     expect(slow.destroyed).toBe(true)
-    // The allowance, and twice the state that it began with, but not all that was published.
+    // The allowance, and twice the largest event, but not all that was published.
     expect(slow.writableLength).toBeLessThan(20_000)
     expect(quick.destroyed).toBe(false)
     expect(quick.events.length).toBe(201)
     expect([streams.clients, streams.letGo]).toEqual([1, 1])
+  })
+
+  it('does not let go of one that keeps up because a single event is larger than the allowance', () => {
+    const streams = new EventStreams('run', { ...usualLimits, waiting: 1000 })
+    const [slow, quick] = [opened(streams), opened(streams)]
+    slow.takes = quick.takes = false
+    for (let k = 1; k <= 4; k++) {
+      streams.publish(change(k, 'x'.repeat(5000)))
+      quick.writableLength = 0
+    }
+    expect([slow.destroyed, quick.destroyed]).toEqual([true, false])
+    expect(slow.writableLength).toBeLessThan(4 * 5000)
   })
 
   it('beats without an id, so that a return is counted from the last change', () => {

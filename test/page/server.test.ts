@@ -8,7 +8,8 @@ import { afterAll, afterEach, beforeAll, describe, expect, it } from 'vitest'
 import { TautlineError } from '../../src/errors.ts'
 import { type PageOptions, pageApp, pageServer } from '../../src/page/server.ts'
 import type { PageView } from '../../src/page/view.ts'
-import { fullState, judged, lastFrame, timeOf } from './support/invented.ts'
+import { raisedAndEnded } from '../alerts/support/shifts.ts'
+import { emptyState, fullState, judged, lastFrame, timeOf } from './support/invented.ts'
 
 const token = 'a-token-of-some-length'
 const now = timeOf(lastFrame)
@@ -244,6 +245,40 @@ describe('the running server', () => {
       event: 'change',
       data: { ensembles: [{ present: { frame: lastFrame + 2 } }] },
     })
+  })
+
+  it('lets go of a reader that takes nothing from its socket, while another reads on', async () => {
+    const state = emptyState()
+    const [alert] = raisedAndEnded()
+    const page = await served({ state, now: Date.now })
+    const { port } = new URL(page.url)
+    const slow = connect(Number(port), '127.0.0.1')
+    ending.push(async () => slow.destroy())
+    const letGo = new Promise((resolve) => slow.on('close', resolve).on('error', () => {}))
+    await new Promise<void>((resolve) => {
+      slow.write('GET /events HTTP/1.1\r\nHost: localhost\r\n\r\n')
+      slow.once('data', () => {
+        slow.pause()
+        resolve()
+      })
+    })
+    const answer = await fetch(`${page.url}events`)
+    let version = alert.version
+    const growing = setInterval(
+      () => state.alert({ ...alert, version: ++version, details: ['x'.repeat(1_500_000)] }),
+      20,
+    )
+    ending.push(async () => clearInterval(growing))
+    // More than the kernel holds for both ends of a socket.
+    const enough = 24_000_000
+    let read = 0
+    for await (const chunk of answer.body!) {
+      read += chunk.length
+      if (read >= enough) break
+    }
+    expect(read).toBeGreaterThanOrEqual(enough)
+    slow.resume()
+    await letGo
   })
 
   it('closes at once although a stream is open', async () => {
