@@ -22,10 +22,14 @@ export const pageHtml = `${head('Tautline', 'app.js')}<body>
 </html>
 `
 
-export const loginHtml = (note: string): string => `${head('Tautline: token', 'login.js')}<body>
+/** `query`: what the login leads back to; URL-encoded. */
+export const loginHtml = (
+  note: string,
+  query: string,
+): string => `${head('Tautline: token', 'login.js')}<body>
 <main class="login">
 <h1>Tautline</h1>
-<form method="post" action="/login">
+<form method="post" action="/login${query}">
 <p><label for="token">Token of this page</label></p>
 <p><input id="token" name="token" type="password" autocomplete="current-password" required autofocus> <button>Look</button></p>
 <p class="quiet" role="status">${note}</p>

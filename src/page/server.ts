@@ -104,7 +104,7 @@ export async function pageApp(options: PageOptions): Promise<FastifyInstance> {
       return refuse(reply, 421, 'This name does not lead to the monitor; use 127.0.0.1 or localhost.')
     if (access.isForeign(asker)) return refuse(reply, 403, 'Another site may not read from here.')
     if (isOpen(request.url) || access.mayLook(asker, now())) return
-    if (request.url.split('?')[0] === '/') return html(reply.code(401), loginHtml(''))
+    if (request.url.split('?')[0] === '/') return html(reply.code(401), loginHtml('', linkedQuery(request)))
     reply.header('www-authenticate', 'Bearer realm="tautline"')
     return refuse(reply, 401, 'The token of the page is needed: Authorization: Bearer TOKEN.')
   })
@@ -155,15 +155,18 @@ export async function pageApp(options: PageOptions): Promise<FastifyInstance> {
       entries: regimes(request.params.ensemble),
     }))
   }
-  if (access.needsToken)
+  if (access.needsToken) {
+    server.get('/login', (request, reply) => reply.redirect(`/${linkedQuery(request)}`, 303))
     server.post('/login', (request, reply) => {
+      const query = linkedQuery(request)
       const token = request.body instanceof URLSearchParams ? request.body.get('token') : null
       const answer = access.login(token ?? '', now())
       if (answer === 'too-often')
-        return html(reply.code(429), loginHtml('Too many wrong tokens; wait a minute.'))
-      if (answer === 'wrong') return html(reply.code(401), loginHtml('This is not the token.'))
-      return reply.header('set-cookie', answer.cookie).redirect('/', 303)
+        return html(reply.code(429), loginHtml('Too many wrong tokens; wait a minute.', query))
+      if (answer === 'wrong') return html(reply.code(401), loginHtml('This is not the token.', query))
+      return reply.header('set-cookie', answer.cookie).redirect(`/${query}`, 303)
     })
+  }
   return server
 }
 
@@ -199,6 +202,12 @@ const refuse = (reply: FastifyReply, status: number, sentence: string): FastifyR
 
 const html = (reply: FastifyReply, text: string): FastifyReply =>
   reply.type('text/html; charset=utf-8').send(text)
+
+/** The part of a link that names an ensemble, and nothing else of it, so that a login leads nowhere but here. */
+function linkedQuery({ query }: FastifyRequest): string {
+  const { ensemble } = query as { readonly ensemble?: unknown }
+  return typeof ensemble === 'string' ? `?ensemble=${encodeURIComponent(ensemble)}` : ''
+}
 
 function askerOf({ headers }: FastifyRequest): Asker {
   const one = (value: string | string[] | undefined) => (Array.isArray(value) ? value[0] : value)

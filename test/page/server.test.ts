@@ -220,6 +220,27 @@ describe('with a token', () => {
     expect((await login('x'.repeat(10_000))).statusCode).toBe(413)
   })
 
+  it('leads a login to the ensemble that the link named, and nowhere else', async () => {
+    const server = await pageApp(options({ token }))
+    ending.push(() => server.close())
+    const ask = (method: 'GET' | 'POST', url: string, given = '') =>
+      server.inject({
+        method,
+        url,
+        headers: { host: 'monitor.example', 'content-type': 'application/x-www-form-urlencoded' },
+        ...(given === '' ? {} : { body: `token=${encodeURIComponent(given)}` }),
+      })
+    const evil = '?ensemble=%22%3E%3Cb%3E%2F%2Fevil.example&next=//evil.example'
+    const kept = '?ensemble=%22%3E%3Cb%3E%2F%2Fevil.example'
+    const form = `action="/login${kept}"`
+    expect((await ask('GET', `/${evil}`)).body).toContain(form)
+    expect((await ask('POST', `/login${evil}`, 'wrong')).body).toContain(form)
+    expect((await ask('POST', `/login${evil}`, token)).headers.location).toBe(`/${kept}`)
+    expect((await ask('GET', `/login${evil}`)).headers.location).toBe(`/${kept}`)
+    expect((await ask('POST', '/login?ensemble=a&ensemble=b', token)).headers.location).toBe('/')
+    expect((await ask('GET', '/login?ensemble=%ED%A0%80')).statusCode).toBe(303)
+  })
+
   it('may listen anywhere', async () => {
     const page = await served({ token, listen: '0.0.0.0:0' })
     expect(page.url).toMatch(/^http:\/\/0\.0\.0\.0:\d+\/$/)

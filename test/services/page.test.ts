@@ -268,13 +268,14 @@ describe('how the page looks', () => {
 describe('a page with a token', () => {
   it('asks for it, remembers it in a cookie that no script can read, and then shows the state', async () => {
     const { url } = await serve(fullState(), { token: 'a-token-of-some-length' })
-    const { tab, complaints } = await open(url)
+    const { tab, complaints } = await open(`${url}?ensemble=desk`)
     await tab.getByLabel('Token of this page').fill('wrong')
     await tab.getByRole('button').click()
     await says(tab, 'This is not the token.')
     await tab.getByLabel('Token of this page').fill('a-token-of-some-length')
     await tab.getByRole('button').click()
     await says(tab, 'Shift 3, confirmed')
+    expect(tab.url()).toBe(`${url}?ensemble=desk`)
     expect(await tab.evaluate(() => document.cookie)).toBe('')
     const [cookie] = await tab.context().cookies()
     expect(cookie).toMatchObject({ httpOnly: true, sameSite: 'Strict', path: '/' })
