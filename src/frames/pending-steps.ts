@@ -18,13 +18,17 @@ export interface StepSnapshot {
 }
 
 const mostSpare = 8
+/** Places of steps that were taken away are cut off when they are so many, and half of all. */
+const cutFrom = 256
 
 /** Steps that wait to be closed, in the order of their keys, as columns over places. */
 export class PendingSteps {
   readonly #mostSteps: number
   readonly #mostEntries: number
   readonly #shape: (key: number) => Pick<Step, 'from' | 'until' | 'inSession'>
+  /** In the order of their keys from `#head` on; what is before it has been taken away. */
   #steps: Step[] = []
+  #head = 0
   #spare: Step[] = []
 
   /** `shape` tells the span of a step. At most `mostSteps` wait, with `mostEntries` places over all of them. */
@@ -39,17 +43,18 @@ export class PendingSteps {
   }
 
   get count(): number {
-    return this.#steps.length
+    return this.#steps.length - this.#head
   }
 
   get first(): Step | undefined {
-    return this.#steps[0]
+    return this.#steps[this.#head]
   }
 
   /** Places that hold a reading, over all steps. */
   get readings(): number {
     let count = 0
-    for (const { time } of this.#steps) for (const t of time) if (t > Number.NEGATIVE_INFINITY) count++
+    for (let s = this.#head; s < this.#steps.length; s++)
+      for (const t of this.#steps[s]!.time) if (t > Number.NEGATIVE_INFINITY) count++
     return count
   }
 
@@ -65,7 +70,7 @@ export class PendingSteps {
 
   /** A new, empty step, wide enough for `places`; null when no further one may wait. */
   open(key: number, places: number): Step | null {
-    const count = this.#steps.length + 1
+    const count = this.count + 1
     if (count > this.#mostSteps || (count > 1 && count * places > this.#mostEntries)) return null
     const spare = this.#spare.pop()
     const step: Step = {
@@ -87,17 +92,28 @@ export class PendingSteps {
 
   /** Takes the first step away; its columns may be used again after the next call of `open`. */
   shift(): Step | undefined {
-    const step = this.#steps.shift()
-    if (step !== undefined && this.#spare.length < mostSpare) this.#spare.push(step)
+    const step = this.#steps[this.#head]
+    if (step === undefined) return undefined
+    this.#head++
+    if (
+      this.#head === this.#steps.length ||
+      (this.#head >= cutFrom && 2 * this.#head >= this.#steps.length)
+    ) {
+      this.#steps.splice(0, this.#head)
+      this.#head = 0
+    }
+    if (this.#spare.length < mostSpare) this.#spare.push(step)
     return step
   }
 
   snapshot(): readonly StepSnapshot[] {
-    return this.#steps.map(({ key, time, value }) => ({ key, time: time.slice(), value: value.slice() }))
+    const waiting = this.#steps.slice(this.#head)
+    return waiting.map(({ key, time, value }) => ({ key, time: time.slice(), value: value.slice() }))
   }
 
   restore(steps: readonly StepSnapshot[]): void {
     this.#spare = []
+    this.#head = 0
     this.#steps = steps.map(({ key, time, value }) => ({
       key,
       ...this.#shape(key),
@@ -109,12 +125,12 @@ export class PendingSteps {
   /** Place of the step with this key, or where it would have to stand. */
   #rank(key: number): number {
     const count = this.#steps.length
-    if (count === 0 || this.#steps[count - 1]!.key < key) return count
+    if (count === this.#head || this.#steps[count - 1]!.key < key) return count
     return this.#firstWhere((step) => step.key >= key)
   }
 
   #firstWhere(holds: (step: Step) => boolean): number {
-    let low = 0
+    let low = this.#head
     let high = this.#steps.length
     while (low < high) {
       const middle = (low + high) >> 1
