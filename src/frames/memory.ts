@@ -3,16 +3,26 @@ import { EffectiveShare, type EffectiveShareSnapshot } from './effective-share.t
 
 export type MemoryChoice = 'none' | 'prewhiten' | 'effective-sample'
 
+/** Share of the steps of a fit in which the signal must have had a value; with fewer it goes on learning. */
+const valuesWanted = 0.5
+
 /** One signal's own history under `prewhiten`. */
 interface History {
-  /** The values that the fit is made of, NaN where missing; null once it is made. */
+  /**
+   * The values that the fit is made of, NaN where missing, though never more than `mostLags` of those in a
+   * row: that is as far as a fit looks back. null once it is made.
+   */
   learning: number[] | null
+  /** Steps since the first of them, and how many of them had a value. */
+  steps: number
+  values: number
   model: Autoregression | null
 }
 
 /**
  * What to do about signals that remember: `prewhiten` passes the residuals of an autoregression fitted to
- * each signal's first `fitOver` steps (till then it is missing); `effective-sample` passes values as they are
+ * each signal's first `fitOver` steps, or to more until it has had half as many values; till then it is
+ * missing, and as long as it has not moved at all it begins anew. `effective-sample` passes values as they are
  * and says by how much fewer independent frames they are worth; `none` does neither. A residual needs all the
  * values before it that the model looks back on: next to a missing one it is missing too.
  */
@@ -78,9 +88,16 @@ export class Memory {
   #learn(i: number, value: number): void {
     const history = this.#histories[i]!
     const learning = history.learning!
-    if (learning.length === 0 && Number.isNaN(value)) return
-    learning.push(value)
-    if (learning.length < this.#fitOver) return
+    const missing = Number.isNaN(value)
+    if (learning.length === 0 && missing) return
+    history.steps++
+    if (!missing) history.values++
+    if (!missing || !learning.slice(-mostLags).every(Number.isNaN)) learning.push(value)
+    if (history.steps < this.#fitOver || history.values < valuesWanted * this.#fitOver) return
+    if (learning.every((past) => past === learning[0] || Number.isNaN(past))) {
+      this.#histories[i] = blank()
+      return
+    }
     history.model = fitAutoregression(Float64Array.from(learning))
     history.learning = null
   }
@@ -93,7 +110,7 @@ export class Memory {
 
   #reserve(signals: number): void {
     if (this.#histories.length >= signals) return
-    while (this.#histories.length < signals) this.#histories.push({ learning: [], model: null })
+    while (this.#histories.length < signals) this.#histories.push(blank())
     const longer = new Float64Array(signals * mostLags).fill(Number.NaN)
     longer.set(this.#last)
     this.#last = longer
@@ -119,3 +136,5 @@ export interface MemorySnapshot {
   readonly last: Float64Array
   readonly share: EffectiveShareSnapshot
 }
+
+const blank = (): History => ({ learning: [], steps: 0, values: 0, model: null })

@@ -28,6 +28,13 @@ function wildReadings(seed: number, steps: number): Reading[] {
   return readings
 }
 
+/** As many of them for these options: with `row` the readings of a second share its time stamp, as in a table. */
+function wildReadingsFor({ step }: Partial<FrameOptions>, seed: number, steps: number): Reading[] {
+  const readings = wildReadings(seed, steps)
+  if (step !== 'row') return readings
+  return readings.map(([name, time, value]) => [name, time - (time % second), value])
+}
+
 const kinds: readonly [string, Partial<FrameOptions>][] = [
   ['plain log-returns', { increment: 'log-return' }],
   ['scaled', { commonVolatility: 'remove', truncateAt: 4, scaleSpan: 50 }],
@@ -46,7 +53,7 @@ const kinds: readonly [string, Partial<FrameOptions>][] = [
 
 describe('a snapshot goes on bit for bit', () => {
   test.each(kinds)('%s', (_, options) => {
-    const readings = wildReadings(5, 1500)
+    const readings = wildReadingsFor(options, 5, 1500)
     const through = new Feeder(options).take(readings).end()
     expect(through.frames.length).toBeGreaterThan(300)
     const random = new Random(6)
@@ -88,7 +95,7 @@ describe('a snapshot goes on bit for bit', () => {
 describe('scaled frames do not depend on batches, order or interleaving', () => {
   test.each(kinds)('%s', (_, options) => {
     const lateness = 700
-    const inOrder = [...wildReadings(9, 700)].sort((a, b) => a[1] - b[1])
+    const inOrder = wildReadingsFor(options, 9, 700).sort((a, b) => a[1] - b[1])
     const one = new Feeder({ ...options, lateness }).take(inOrder).end()
     expect(one.frames.length).toBeGreaterThan(100)
     fc.assert(

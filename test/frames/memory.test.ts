@@ -110,6 +110,53 @@ describe('prewhitening', () => {
     expect(seen.slice(300)).toEqual(Array.from({ length: 20 }, (_, k) => (k === 10 || k === 11 ? 0 : 1)))
   })
 
+  /** Residuals of x under a fit over 240 steps, NaN where there is none; `there` tells when x has a value. */
+  function whitened(x: Float64Array, there: (t: number) => boolean, memory: Memory): number[] {
+    return [...x].map((value, t) => {
+      const row = Float64Array.of(there(t) ? value : 0)
+      const present = Uint8Array.of(there(t) ? 1 : 0)
+      memory.apply(row, present)
+      return present[0] === 1 ? row[0]! : Number.NaN
+    })
+  }
+
+  test('a signal that hardly spoke at first is fitted once it has had half of the values', () => {
+    const seeds = Array.from({ length: 12 }, (_, k) => 240 + k)
+    const left = seeds.map((seed) => {
+      const x = autoregressive(new Random(seed), [0.8], 3000)
+      const residuals = whitened(x, (t) => t < 2 || t >= 240, new Memory('prewhiten', 240))
+      const first = residuals.findIndex((residual) => !Number.isNaN(residual))
+      expect(first).toBe(240 + 118)
+      return lagOne(residuals.slice(first))
+    })
+    // From 120 values r̂ errs by √((1 − r²)/120) = 0.055 and is (1 + 4r)/120 = 0.035 too small (Kendall 1954, from
+    // memory); residuals under r̂ = r − d keep d(1 − r² + rd)/(1 − r² + d²), which is about d.
+    const mean = left.reduce((sum, r) => sum + r, 0) / left.length
+    expect(Math.abs(mean)).toBeLessThan(0.035 + (3 * 0.055) / Math.sqrt(left.length))
+  })
+
+  test('what is kept for the fit of a signal that speaks now and then stays small', () => {
+    const memory = new Memory('prewhiten', 240)
+    const x = autoregressive(new Random(25), [0.8], 12_000)
+    whitened(x.slice(0, 11_900), (t) => t % 100 === 0, memory)
+    expect(memory.snapshot().histories[0]!.model).toBeNull()
+    // One value and three missing ones beside it.
+    expect(memory.snapshot().histories[0]!.learning).toHaveLength(119 * 4)
+    whitened(x.slice(11_900), (t) => t % 100 === 0, memory)
+    expect(memory.snapshot().histories[0]).toMatchObject({ learning: null, model: { weights: [] } })
+  })
+
+  test('a signal that rested all the while is not fitted before it has moved', () => {
+    const x = autoregressive(new Random(26), [0.8], 4000)
+    const residuals = whitened(x.fill(7, 0, 700), () => true, new Memory('prewhiten', 240))
+    const first = residuals.findIndex((residual) => !Number.isNaN(residual))
+    // It begins anew at 240 and 480; the fit over [480, 720) holds the first values that move.
+    expect(first).toBe(720)
+    const moving = whitened(x.fill(7, 0, 720), () => true, new Memory('prewhiten', 240))
+    expect(moving.findIndex((residual) => !Number.isNaN(residual))).toBe(960)
+    expect(Math.abs(lagOne(moving.slice(960)))).toBeLessThan(0.15)
+  })
+
   test('does not look back over an interruption', () => {
     const memory = new Memory('prewhiten', 300)
     for (const value of autoregressive(new Random(23), [0.8], 300))
