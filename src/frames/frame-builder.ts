@@ -70,9 +70,11 @@ export class FrameBuilder {
     const raw = this.#memory.remembers ? x.slice() : x
     this.#memory.apply(x, present)
     const scaled = this.#scaler.scale(x, present)
-    if (scaled === null) return null
-    const count = countOf(scaled.present)
-    if (count === 0 || (this.#next === 0 && 2 * count < countOf(present))) return null
+    const count = scaled === null ? 0 : countOf(scaled.present)
+    if (scaled === null || count === 0 || (this.#next === 0 && 2 * count < countOf(present))) {
+      this.#epps.interrupt()
+      return null
+    }
     this.#epps.push(scaled.scaled, scaled.present)
     this.#tellClipped(scaled, levels)
     for (let i = 0; i < n; i++) if (scaled.present[i] === 0) raw[i] = 0

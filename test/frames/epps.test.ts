@@ -1,16 +1,16 @@
 import { describe, expect, test } from 'vitest'
 import { EppsCheck } from '../../src/frames/epps.ts'
-import { FrameMaker } from '../../src/frames/frame-maker.ts'
+import { FrameMaker, type Made } from '../../src/frames/frame-maker.ts'
 import { Random } from '../support/random.ts'
-import { plainOptions, present } from './feed.ts'
+import { Feeder, plainOptions, present, type Reading } from './feed.ts'
 
 const rho = 0.6
 
 /**
  * Two random walks of correlation ρ, each seen at the instants of its own Poisson process of rate 1 a second.
- * Readings of `seconds` seconds through the frame maker, on steps of `step` seconds.
+ * Readings of `seconds` seconds through a frame maker with steps of `step` seconds.
  */
-function correlationOfPreviousTicks(step: number, seconds: number, seed: number): number {
+function previousTicks(step: number, seconds: number, seed: number): { maker: FrameMaker; made: Made } {
   const random = new Random(seed)
   const names = ['a', 'b']
   const next = [0, 0]
@@ -52,10 +52,14 @@ function correlationOfPreviousTicks(step: number, seconds: number, seed: number)
     },
     present,
   )
+  return { maker, made }
+}
+
+function correlationOf({ frames }: Made): number {
   let ab = 0
   let aa = 0
   let bb = 0
-  for (const { increments } of made.frames) {
+  for (const { increments } of frames) {
     const a = increments[0]!
     const b = increments[1]!
     ab += a * b
@@ -74,9 +78,36 @@ describe('the Epps effect', () => {
     (step, expected, seconds) => {
       expect(rho * (1 - (1 - Math.exp(-step)) / step)).toBeCloseTo(expected, 4)
       // Standard error about 1/√frames: 0.0022 and 0.0035.
-      expect(Math.abs(correlationOfPreviousTicks(step, seconds, 41) - expected)).toBeLessThan(0.012)
+      expect(Math.abs(correlationOf(previousTicks(step, seconds, 41).made) - expected)).toBeLessThan(0.012)
     },
   )
+
+  test('of readings whose step is short for them a warning comes, and none where it is long', () => {
+    // ρ(1 − (1 − e^−h)/h) at h and 6h: .2207 and .5003, a ratio of .44; .5700 and .5950, .96. Warned below .7.
+    // The running means reach back some 800 steps and 130 longer ones: standard errors of about .035 and .07.
+    const short = previousTicks(1, 20_000, 45).maker
+    expect(Math.abs(short.stepComparison!.step - 0.2207)).toBeLessThan(0.12)
+    expect(Math.abs(short.stepComparison!.longer - 0.5003)).toBeLessThan(0.25)
+    expect(short.stepWarning).toMatch(/6 steps \(Epps effect\)/)
+    const long = previousTicks(20, 60_000, 45).maker
+    expect(Math.abs(long.stepComparison!.step - 0.57)).toBeLessThan(0.12)
+    expect(long.stepWarning).toBeNull()
+  })
+
+  test('no sum of a longer step is taken over a step that made no frame', () => {
+    // Two steps of every six are out of all bounds for both signals, so that no six follow on each other.
+    const comparisonWhere = (wild: (k: number) => boolean) => {
+      const random = new Random(46)
+      const readings: Reading[] = []
+      for (let k = 0; k < 3000; k++) {
+        const level = random.normal()
+        for (const name of ['a', 'b']) readings.push([name, 1e12 + 1000 * k, wild(k) ? 1e99 : 1e-5 * level])
+      }
+      return new Feeder({ truncateAt: 4 }).take(readings).maker.stepComparison
+    }
+    expect(comparisonWhere(() => false)!.step).toBeGreaterThan(0.9)
+    expect(comparisonWhere((k) => k % 6 === 0)).toBeNull()
+  })
 
   /** Frames of 10 signals with correlation ρ that update with a chance of `rate` a step; else the change waits. */
   function watched(rate: number, frames: number): EppsCheck {
