@@ -159,6 +159,37 @@ describe('alignment', () => {
     }
   })
 
+  test.each([0.1, 0.3, 1 / 3, 7.7, 1000])(
+    'with steps of %d ms a reading at fractions of one is in its own',
+    (step) => {
+      // Times near and at multiples of the step; what is k·step in floating point begins step k.
+      const multiple = fc.integer({ min: 1, max: 5000 })
+      const near = fc.constantFrom<(time: number) => number>(
+        (time) => time,
+        (time) => time * (1 - Number.EPSILON / 2), // the next number below
+        (time) => time * (1 + Number.EPSILON),
+        (time) => time + 0.5 * step,
+      )
+      fc.assert(
+        fc.property(multiple, near, (k, moved) => {
+          const time = moved((k + 1) * step)
+          const feeder = new Feeder({ step, lateness: 0 })
+            .take([
+              ['a', time - 1.5 * step, 1],
+              ['a', time, 2],
+            ])
+            .end()
+          const end = feeder.table.find(({ increments }) => increments.a === 1)!.time
+          const key = Math.round(end / step)
+          expect(end).toBe(key * step)
+          expect(time).toBeLessThan(key * step)
+          expect(time).toBeGreaterThanOrEqual((key - 1) * step)
+        }),
+        { seed: 8, numRuns: 200 },
+      )
+    },
+  )
+
   test('step row makes every distinct time a frame, and a missing cell is missing', () => {
     const feeder = new Feeder({ step: 'row', lateness: 0 })
       .take([

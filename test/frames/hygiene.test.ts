@@ -55,6 +55,24 @@ describe('stuck', () => {
     expect(noticed).toBe(at(601 + 8 * 19 + 1))
   })
 
+  test('the lull of a slow instrument is none, though every reading of it repeats the price', () => {
+    // It trades every 9 s or so, and every 30 s or so over a lull of 40 min; then it dies.
+    const random = new Random(20)
+    let price = 100
+    let next = 0
+    const feeder = feed({ staleAfter: 120 * second }, 9000, (signal, k) => {
+      if (signal !== 'a') return moving(k)
+      if (k >= next && k < 6000) {
+        price += random.normal()
+        next = k + 1 + Math.floor(-(k >= 2000 && k < 4400 ? 30 : 9) * Math.log(1 - random.uniform()))
+      }
+      return price
+    })
+    const found = of(feeder, 'stuck')
+    expect(found.map(([signal, , to]) => [signal, to])).toEqual([['a', null]])
+    expect(found[0]![1]).toBeGreaterThan(at(5800))
+  })
+
   test('stuck-after sets the time instead', () => {
     const feeder = feed({ stuckAfter: 10 * second }, 60, (signal, k) =>
       moving(signal === 'b' ? Math.min(k, 20) : k),

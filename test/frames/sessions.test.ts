@@ -88,6 +88,36 @@ describe('sessions', () => {
     expect(sessions.at(utc('2026-07-06T22:00:00Z'))).toBe(utc('2026-07-06T22:00:00Z'))
   })
 
+  // 2026-06-01 is a Monday; the week from it, each day open or closed at noon.
+  test.each([
+    ['mon-sun', 'mon tue wed thu fri sat sun'],
+    ['mon-fri', 'mon tue wed thu fri'],
+    ['fri-mon', 'mon fri sat sun'],
+    ['sat-tue,thu', 'mon tue thu sat sun'],
+    ['mon, wed, fri', 'mon wed fri'],
+    ['Sun', 'sun'],
+    ['wed-wed', 'wed'],
+  ])('"%s" opens on %s', (days, open) => {
+    const sessions = new Sessions({ ...oslo, days })
+    const week = ['mon', 'tue', 'wed', 'thu', 'fri', 'sat', 'sun']
+    const noon = (d: number): number => utc('2026-06-01T10:00:00Z') + d * 86_400_000
+    expect(week.filter((_, d) => !Number.isNaN(sessions.at(noon(d)))).join(' ')).toBe(open)
+  })
+
+  test.each(['', 'day', 'mon-', 'mon-fry', 'mon,,tue'])('"%s" is no list of days', (days) => {
+    expect(() => new Sessions({ ...oslo, days })).toThrow(RangeError)
+  })
+
+  test('a span of days lies in a session only as a whole', () => {
+    const sessions = new Sessions(oslo)
+    const opens = utc('2026-06-01T07:00:00Z')
+    const closes = utc('2026-06-01T14:20:00Z')
+    expect(sessions.covers(opens, closes)).toBe(true)
+    expect(sessions.covers(opens - 1, closes)).toBe(false)
+    expect(sessions.covers(opens, closes + 1)).toBe(false)
+    expect(sessions.covers(opens, closes + 86_400_000)).toBe(false)
+  })
+
   test('weekends and holidays are closed, and times before 1970 are no worse than others', () => {
     const sessions = new Sessions({ ...oslo, holidays: ['2026-05-01'] })
     expect(sessions.at(utc('2026-05-01T10:00:00Z'))).toBeNaN()
