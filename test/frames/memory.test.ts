@@ -2,7 +2,9 @@ import { describe, expect, test } from 'vitest'
 import { fitAutoregression } from '../../src/frames/autoregression.ts'
 import { EffectiveShare } from '../../src/frames/effective-share.ts'
 import { Memory } from '../../src/frames/memory.ts'
+import { type OpenTable, testWithOpenData } from '../support/open-data.ts'
 import { Random } from '../support/random.ts'
+import { withoutYear } from '../support/without-year.ts'
 
 /** x_t = Σ φ_k x_{t−k} + e_t with standard normal e, after a run-in. */
 function autoregressive(random: Random, weights: readonly number[], length: number): Float64Array {
@@ -248,5 +250,67 @@ describe('effective sample', () => {
     }
     expect(other.value).toBe(through.value)
     expect(other.snapshot()).toEqual(through.snapshot())
+  })
+})
+
+describe('the wind stations (Haslett & Raftery 1989; figures of check-values, by numpy)', () => {
+  const meanOf = (values: readonly number[]): number => values.reduce((sum, v) => sum + v, 0) / values.length
+  const stationsOf = ({ signals, dates, values }: OpenTable): Float64Array[] => {
+    const clean = withoutYear(values, signals.length)
+    return signals.map((_, i) => Float64Array.from(dates, (_, t) => clean[t * signals.length + i]!))
+  }
+
+  testWithOpenData('wind', 'have lag-1 autocorrelations of 0.43 to 0.56, 0.515 on average', (wind) => {
+    const r = stationsOf(wind).map((station) => lagOne([...station]))
+    expect(Math.min(...r)).toBeCloseTo(0.43, 2)
+    expect(Math.max(...r)).toBeCloseTo(0.56, 2)
+    expect(meanOf(r)).toBeCloseTo(0.515, 3)
+  })
+
+  testWithOpenData('wind', 'put the edge of a window of 100 days near 2.116, not at 1.8128', (wind) => {
+    const stations = stationsOf(wind)
+    const days = wind.dates.length
+    const random = new Random(40)
+    // Each shifted round by its own offset: memory is all that they share.
+    const from = stations.map(() => random.below(days))
+    const share = new EffectiveShare()
+    const shares: number[] = []
+    for (let t = 0; t < days; t++) {
+      share.push(
+        Float64Array.from(stations, (station, i) => station[(t + from[i]!) % days]!),
+        everywhere(stations.length),
+      )
+      if (t % 500 === 499) shares.push(share.value)
+    }
+    const edge = (share: number): number => (1 + Math.sqrt(stations.length / (100 * share))) ** 2
+    // Bartlett's sum over the whole record: the stations remember a little more than their first lag says.
+    let sum = 0
+    for (let lag = 1; lag <= 20; lag++) {
+      const r = stations.map((x) => {
+        const products = x.map((value, t) => (t < lag ? 0 : value * x[t - lag]!))
+        return meanOf([...products]) / meanOf([...x.map((value) => value * value)])
+      })
+      const pairs = stations.length * (stations.length - 1)
+      sum += (meanOf(r) ** 2 * stations.length ** 2 - r.reduce((squares, v) => squares + v * v, 0)) / pairs
+    }
+    const whole = edge(1 / (1 + 2 * sum))
+    expect(Math.abs(whole - 2.116)).toBeLessThan(0.04)
+    // Shares at 13 times scatter by 0.022: the edge of their mean errs by 0.007.
+    expect(Math.abs(edge(meanOf(shares)) - whole)).toBeLessThan(0.03)
+  })
+
+  testWithOpenData('wind', 'lose nearly all memory to a fit over their first 400 days', (wind) => {
+    const stations = stationsOf(wind)
+    const memory = new Memory('prewhiten', 400)
+    const residuals = stations.map((): number[] => [])
+    for (let t = 0; t < wind.dates.length; t++) {
+      const row = Float64Array.from(stations, (station) => station[t]!)
+      memory.apply(row, everywhere(stations.length))
+      if (t >= 400) for (const [i, residual] of row.entries()) residuals[i]!.push(residual)
+    }
+    // A coefficient from 400 days errs by √((1 − r²)/400) = 0.043.
+    const left = residuals.map(lagOne)
+    expect(Math.max(...left.map(Math.abs))).toBeLessThan(4 * 0.043)
+    expect(Math.abs(meanOf(left))).toBeLessThan(0.1)
   })
 })
