@@ -1,5 +1,6 @@
 import { describe, expect, test } from 'vitest'
 import type { FrameOptions } from '../../src/frames/frame-maker.ts'
+import { Hygiene } from '../../src/frames/hygiene.ts'
 import { Random } from '../support/random.ts'
 import { Feeder, type Reading } from './feed.ts'
 
@@ -84,6 +85,8 @@ describe('stuck', () => {
   test('a signal that never moved at all is found as well', () => {
     const feeder = feed({}, 700, (signal, k) => (signal === 'c' ? 42 : moving(k)))
     expect(of(feeder, 'stuck')).toEqual([['c', at(1), null]])
+    // Too young to know its rests, it is given eight times 60 unmoved steps.
+    expect(feeder.frames.find(({ present }) => present[2] === 0)!.time).toBe(at(1 + 480 + 1))
   })
 
   test('a night between two equal prices is no standstill', () => {
@@ -129,6 +132,17 @@ describe('stale', () => {
         'stale',
       ),
     ).toEqual([])
+    expect(
+      of(
+        feed(row, 60, (s, k) => (s === 'a' && k >= 30 && k < 41 ? null : moving(k))),
+        'stale',
+      ),
+    ).toEqual([])
+    const twelve = feed(row, 60, (s, k) => (s === 'a' && k >= 30 && k < 42 ? null : moving(k)))
+    expect(of(twelve, 'stale').map(([signal, from]) => [signal, from])).toEqual([
+      ['a', at(29)],
+      ['a', at(29)],
+    ])
     const long = feed(row, 60, (s, k) => (s === 'a' && k >= 30 && k < 45 ? null : moving(k)))
     expect(of(long, 'stale')).toEqual([
       ['a', at(29), null],
@@ -175,6 +189,25 @@ describe('clipped', () => {
     expect(from).toBeLessThan(at(1200))
     expect(to).toBeGreaterThan(at(1600))
     expect(to).toBeLessThan(at(1900))
+  })
+
+  test('what is far more often for one signal is no news for one whose own history is that', () => {
+    // K = 5: 1/K² is 0.04. a is clipped in 1 of 16 frames from the start, b but once; then both in 1 of 8.
+    const hygiene = new Hygiene(
+      { stuckAfter: null, staleAfter: null, truncateAt: 5 },
+      (place) => 'ab'[place]!,
+    )
+    hygiene.reserve(2)
+    const every = (frames: number, a: number, b: number): void => {
+      for (let k = 0; k < frames; k++)
+        hygiene.clipped(Uint8Array.of(1, 1), Uint8Array.of(k % a === 0 ? 1 : 0, k % b === 0 ? 1 : 0), at(k))
+    }
+    every(10_000, 16, Number.POSITIVE_INFINITY)
+    hygiene.news()
+    every(2000, 8, 8)
+    expect(hygiene.news().map(({ signal, finding, to }) => [signal, finding, to])).toEqual([
+      ['b', 'clipped', null],
+    ])
   })
 
   test('one flash print is none', () => {
