@@ -13,7 +13,7 @@ export interface RunFigures {
   readonly readings: number
   readonly frames: number
   readonly spectra: number
-  /** From the first batch to the last effect. */
+  /** From the start of reading (Kafka: when the partitions are assigned) to the last effect. */
   readonly seconds: number
   readonly cpuSeconds: number
   readonly residentMiB: number
@@ -44,7 +44,7 @@ const stop = new Subject<void>()
 let readings = 0
 let frames = 0
 let spectra = 0
-let started = Number.NaN
+let started = drive.lap()
 let cpu = process.cpuUsage()
 let ended = Number.NaN
 const run = pipeline({
@@ -53,25 +53,25 @@ const run = pipeline({
   drive,
   sliceMs: longestSlice,
   stop,
-  effects({ arrival: { event }, judged }) {
-    if (event.type !== 'batch') return
+  effects({ arrival: { feed, event }, judged }) {
+    if (event.type === 'assigned' && feed?.kind === 'kafka') {
+      started = drive.lap()
+      cpu = process.cpuUsage()
+    }
     for (const one of judged) {
       frames++
       if (one.share !== null) spectra++
       for (const [room, ms] of Object.entries(one.spent)) rooms[room]! += ms
     }
-    if (Number.isNaN(started)) {
-      started = drive.lap()
-      cpu = process.cpuUsage()
-    }
-    readings += event.batch.count
     ended = drive.lap()
+    if (event.type !== 'batch') return
+    readings += event.batch.count
     if (Number(wanted) > 0 && readings >= Number(wanted)) stop.next()
   },
 })
 await lastValueFrom(run, { defaultValue: null })
 const used = process.cpuUsage(cpu)
-const seconds = (Math.max(ended, drive.lap()) - started) / 1000
+const seconds = (ended - started) / 1000
 rooms.feeds = seconds * 1000 - Object.values(rooms).reduce((sum, ms) => sum + ms, 0)
 const figures: RunFigures = {
   readings,

@@ -8,7 +8,7 @@ import { type FrameTable, ResampledEdge } from './resampled-edge.ts'
 const patience = 10
 /** One draw a frame until there are so many, then one in so many frames. */
 const drawsAtFirst = 40
-const framesADraw = 32
+const framesADraw = 64
 const drawsKept = 100
 
 /**

@@ -55,6 +55,8 @@ export class ResampledEdge {
   #spectra: Float64Array[] = []
   #next = 0
   #state: number
+  /** The limit by the present draws, once it was asked for. */
+  #limit: ResampledLimit | null = null
   #columns = new Float64Array(0)
   #scratch = new Float64Array(0)
   #matrix = new Float64Array(0)
@@ -81,12 +83,14 @@ export class ResampledEdge {
     this.#projectOff(n, frames, common.count, common.vectors)
     this.#standardise(n, frames, true)
     this.#correlate(n, frames)
+    this.#limit = null
     this.#spectra[this.#next] = this.#solver.solve(this.#matrix, n, 0).values
     this.#next = (this.#next + 1) % (this.#options.drawsKept ?? usualDrawsKept)
   }
 
   /** Forgets all draws. */
   clear(): void {
+    this.#limit = null
     this.#spectra = []
     this.#next = 0
   }
@@ -101,6 +105,11 @@ export class ResampledEdge {
    * with the mean and the deviation of the draws, and no less than the largest.
    */
   get limit(): ResampledLimit | null {
+    this.#limit ??= this.#limitOfDraws()
+    return this.#limit
+  }
+
+  #limitOfDraws(): ResampledLimit | null {
     const draws = this.#spectra.length
     if (draws < fewestDraws) return null
     const n = this.#spectra[0]!.length
@@ -223,6 +232,7 @@ export class ResampledEdge {
 
   restore(snapshot: unknown): void {
     const { spectra, next, state } = snapshot as ResampledEdgeSnapshot
+    this.#limit = null
     this.#spectra = spectra.map((values) => values.slice())
     this.#next = next
     this.#state = state

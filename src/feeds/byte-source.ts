@@ -31,14 +31,32 @@ export async function skipByReading(source: ByteSource, count: number): Promise<
 
 const reasonOf = (error: unknown): string => (error instanceof Error ? error.message : String(error))
 
-/** A file on disk, as long as it was when it was opened. */
+const pieceBytes = 256 * 1024
+
+/** A piece of a file that was asked for: its bytes, or why they could not be read. */
+interface Piece {
+  readonly buffer: Buffer
+  readonly length: number
+  readonly fault: unknown
+}
+
+/**
+ * A file on disk, as long as it was when it was opened. One piece is read ahead, so that the disk works while
+ * the last piece is looked at.
+ */
 export class FileSource implements ByteSource {
   readonly waiting = null
   readonly damage = null
   readonly size: number
   readonly #path: string
   readonly #handle: FileHandle
+  /** Place in the file of the next byte that `read` gives. */
   #position = 0
+  #piece: Piece = { buffer: Buffer.alloc(0), length: 0, fault: null }
+  /** Bytes of the piece that were given. */
+  #given = 0
+  #ahead: Promise<Piece> | null = null
+  #spare: Buffer | null = null
 
   private constructor(path: string, handle: FileHandle, size: number) {
     this.#path = path
@@ -64,27 +82,62 @@ export class FileSource implements ByteSource {
   }
 
   async read(into: Buffer, at: number, length: number): Promise<number> {
-    try {
-      const { bytesRead } = await this.#handle.read(into, at, length, this.#position)
-      this.#position += bytesRead
-      return bytesRead
-    } catch (error) {
-      throw new TautlineError('feed-file', `${this.#path}: ${reasonOf(error)}.`, { cause: error })
+    if (this.#given === this.#piece.length) {
+      const spent = this.#piece.buffer
+      const piece = await (this.#ahead ?? this.#fetch(this.#position))
+      this.#ahead = null
+      if (piece.fault !== null) {
+        throw new TautlineError('feed-file', `${this.#path}: ${reasonOf(piece.fault)}.`, {
+          cause: piece.fault,
+        })
+      }
+      this.#piece = piece
+      this.#given = 0
+      this.#spare = spent.length === pieceBytes ? spent : null
+      if (piece.length > 0) this.#ahead = this.#fetch(this.#position + piece.length)
     }
+    const count = this.#piece.buffer.copy(
+      into,
+      at,
+      this.#given,
+      Math.min(this.#piece.length, this.#given + length),
+    )
+    this.#given += count
+    this.#position += count
+    return count
   }
 
   async skip(count: number): Promise<number> {
     const skipped = Math.max(0, Math.min(count, this.size - this.#position))
     this.#position += skipped
+    const within = this.#given + skipped <= this.#piece.length
+    if (within) this.#given += skipped
+    else {
+      await this.#ahead
+      this.#ahead = null
+      this.#given = this.#piece.length
+    }
     return skipped
+  }
+
+  async #fetch(position: number): Promise<Piece> {
+    const buffer = this.#spare ?? Buffer.allocUnsafe(pieceBytes)
+    this.#spare = null
+    try {
+      const { bytesRead } = await this.#handle.read(buffer, 0, pieceBytes, position)
+      return { buffer, length: bytesRead, fault: null }
+    } catch (fault) {
+      return { buffer, length: 0, fault }
+    }
   }
 
   behind(): number {
     return Math.max(0, this.size - this.#position)
   }
 
-  close(): Promise<void> {
-    return this.#handle.close()
+  async close(): Promise<void> {
+    await this.#ahead
+    await this.#handle.close()
   }
 }
 

@@ -266,15 +266,25 @@ export class MomentEstimator implements Estimator {
   ): void {
     const n = active.length
     const second = this.#second
+    const first = active[0] ?? 0
+    const together = n > 0 && active[n - 1]! - first === n - 1
     for (let a = 0; a < n; a++) {
-      const i = active[a]!
-      const row = triangleSize(i)
-      const sum = this.#sum[i]!
+      const row = triangleSize(active[a]!)
+      const sum = this.#sum[active[a]!]!
       const factor = factors[a]!
       const at = a * n
+      if (together) {
+        const from = row + first
+        for (let b = 0; b <= a; b++)
+          out[at + b] = (second[from + b]! - sum * means[b]!) * factor * factors[b]!
+      } else {
+        for (let b = 0; b <= a; b++) {
+          out[at + b] = (second[row + active[b]!]! - sum * means[b]!) * factor * factors[b]!
+        }
+      }
       for (let b = 0; b <= a; b++) {
-        const m = (second[row + active[b]!]! - sum * means[b]!) * factor * factors[b]!
-        out[at + b] = Math.min(most, Math.max(-most, m))
+        const m = out[at + b]!
+        if (m > most || m < -most) out[at + b] = Math.sign(m) * most
       }
     }
     mirror(out, n)
