@@ -16,7 +16,7 @@ import {
 } from './support.ts'
 
 /**
- * Throughput of the whole chain on a recorded NDJSON of 100 signals, ten readings a signal and frame, beside
+ * Throughput of the whole chain on a recorded NDJSON of 100 signals, ten readings a signal and frame, 8,000 frames, beside
  * the script that one would write instead (bench/baseline/baseline.py), interleaved in one run. With --kafka
  * HOST:PORT the same through a 4-partition topic, one JSON reading a message.
  */
@@ -32,8 +32,8 @@ const generator = fileURLToPath(new URL('../../bench/baseline/gen.py', import.me
 const oneRun = fileURLToPath(new URL('./one-run.js', import.meta.url))
 
 const python = baselinePython()
-const recording = join(cache, 'f100.ndjson')
-if (!existsSync(recording)) run(python, [generator, '100', '2000', '10', join(cache, 'f100')])
+const recording = join(cache, 'f100long.ndjson')
+if (!existsSync(recording)) run(python, [generator, '100', '8000', '10', join(cache, 'f100long')])
 
 const format = '{ signal: /signal, time: /time, value: /value, unit: ms }'
 const chain = (clockAndRest: string, feed: string): string => `

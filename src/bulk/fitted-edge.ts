@@ -7,7 +7,7 @@ import { type FrameTable, ResampledEdge } from './resampled-edge.ts'
 /** Frames in a row with a poor fit before the frames are resampled, and with a good one before they are not. */
 const patience = 10
 /** One draw a frame until there are so many, then one in so many frames. */
-const drawsAtFirst = 40
+const drawsAtFirst = 30
 const framesADraw = 64
 const drawsKept = 100
 

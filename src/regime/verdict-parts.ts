@@ -24,12 +24,21 @@ export function shown(
 /** 1 + √q: the smallest population eigenvalue, in units of the noise, that stands out (Baik, Ben Arous & Péché 2005). */
 export const sightOf = (o: Observation): number => 1 + Math.sqrt(o.active.length / o.window.effective)
 
-function leadersOf(o: Observation): Carrier[] {
-  if (o.spectrum === null || o.spectrum.modes < 1) return []
-  const { vectors } = o.spectrum
-  return Array.from(o.active, (i, a) => ({ signal: o.names[i] ?? `#${i}`, share: vectors[a]! ** 2 }))
-    .sort((a, b) => b.share - a.share)
-    .slice(0, mostLeaders)
+function leadersOf({ spectrum, active, names }: Observation): Carrier[] {
+  if (spectrum === null || spectrum.modes < 1) return []
+  const { vectors } = spectrum
+  const places: number[] = []
+  for (let a = 0; a < active.length; a++) {
+    const size = Math.abs(vectors[a]!)
+    if (places.length === mostLeaders && size <= Math.abs(vectors[places[mostLeaders - 1]!]!)) continue
+    let at = places.length === mostLeaders ? mostLeaders - 1 : places.length
+    for (; at > 0 && Math.abs(vectors[places[at - 1]!]!) < size; at--) places[at] = places[at - 1]!
+    places[at] = a
+  }
+  return places.map((a) => ({
+    signal: names[active[a]!] ?? `#${active[a]!}`,
+    share: vectors[a]! * vectors[a]!,
+  }))
 }
 
 export const percent = (ratio: number): string => `${Math.round(100 * Math.min(ratio, 1e4))} %`

@@ -268,26 +268,24 @@ export class MomentEstimator implements Estimator {
     const second = this.#second
     const first = active[0] ?? 0
     const together = n > 0 && active[n - 1]! - first === n - 1
+    let largest = 0
+    let least = 0
     for (let a = 0; a < n; a++) {
       const row = triangleSize(active[a]!)
       const sum = this.#sum[active[a]!]!
       const factor = factors[a]!
-      const at = a * n
-      if (together) {
-        const from = row + first
-        for (let b = 0; b <= a; b++)
-          out[at + b] = (second[from + b]! - sum * means[b]!) * factor * factors[b]!
-      } else {
-        for (let b = 0; b <= a; b++) {
-          out[at + b] = (second[row + active[b]!]! - sum * means[b]!) * factor * factors[b]!
-        }
+      for (let b = 0; b < a; b++) {
+        const own = together ? second[row + first + b]! : second[row + active[b]!]!
+        const m = (own - sum * means[b]!) * factor * factors[b]!
+        out[a * n + b] = m
+        out[b * n + a] = m
+        if (m > largest) largest = m
+        else if (m < least) least = m
       }
-      for (let b = 0; b <= a; b++) {
-        const m = out[at + b]!
-        if (m > most || m < -most) out[at + b] = Math.sign(m) * most
-      }
+      out[a * n + a] = (second[row + active[a]!]! - sum * means[a]!) * factor * factor
     }
-    mirror(out, n)
+    if (largest <= most && least >= -most) return
+    for (let k = 0; k < n * n; k++) if (Math.abs(out[k]!) > most) out[k] = Math.sign(out[k]!) * most
   }
 
   #load(x: Float64Array, present: Uint8Array, y: Float64Array, p: Uint8Array, entering: boolean): void {
@@ -367,21 +365,6 @@ export class MomentEstimator implements Estimator {
     this.#presentY = new Uint8Array(capacity)
     this.#presentZ = new Uint8Array(capacity)
     this.#gaps = this.#gaps?.resized(capacity) ?? null
-  }
-}
-
-const tile = 16
-
-/** Copies the lower triangle of an n × n matrix to the upper, tile by tile, so that both stay in the cache. */
-function mirror(out: Float64Array, n: number): void {
-  for (let top = 0; top < n; top += tile) {
-    const bottom = Math.min(n, top + tile)
-    for (let left = 0; left <= top; left += tile) {
-      for (let a = top; a < bottom; a++) {
-        const right = Math.min(a, left + tile)
-        for (let b = left; b < right; b++) out[b * n + a] = out[a * n + b]!
-      }
-    }
   }
 }
 
