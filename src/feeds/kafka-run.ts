@@ -16,7 +16,7 @@ import { readerFor } from './reader-for.ts'
 /** Fetched bytes that wait in memory, over all partitions and within one, roughly. */
 const mostWaiting = 64 * 1024 * 1024
 const leastPerPartition = 64 * 1024
-const mostPerPartition = 1024 * 1024
+const mostPerPartition = 4 * 1024 * 1024
 /** Readings in one batch of a partition. */
 const laneBatch = 8192
 const firstDelayMs = 500
