@@ -78,6 +78,14 @@ function clockFaults(clock: ClockSettings, path: Path): Fault[] {
         'at least one step',
       ),
     )
+  if (stale !== undefined && stale > mostOpenFrames * step)
+    faults.push(
+      conflict(
+        [...path, 'stale-after'],
+        'A silence would make so many frames of values long gone.',
+        `at most ${mostOpenFrames} steps`,
+      ),
+    )
   if (lateness > mostOpenFrames * step)
     faults.push(
       conflict(

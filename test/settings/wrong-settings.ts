@@ -192,6 +192,7 @@ export const wrongSettings: readonly WrongSetting[] = [
     wrongValue('ensembles.desk.clock.step', '"-5s"', 'a duration'),
   ),
   is('stale before a step is over', clock('stale-after: ‸1s'), conflict('ensembles.desk.clock.stale-after')),
+  is('values fresh for weeks', clock('stale-after: ‸7d'), conflict('ensembles.desk.clock.stale-after')),
   is('lateness of days', clock('lateness: ‸2d'), conflict('ensembles.desk.clock.lateness')),
   is('a misspelt lateness', clock('‸latness: 2s'), unknownKey('ensembles.desk.clock.latness', 'lateness')),
   is(
