@@ -5,7 +5,6 @@ interface KernelExports {
   tridiagonalise(a: number, n: number, ld: number, d: number, e: number, tau: number, work: number): void
   eigenvalues(d: number, e: number, n: number): number
   backTransform(a: number, n: number, ld: number, tau: number, v: number, k: number): void
-  rankTwo(a: number, ld: number, x: number, y: number): void
 }
 
 export interface Kernels extends KernelExports {

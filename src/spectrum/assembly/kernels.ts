@@ -225,34 +225,6 @@ export function eigenvalues(d: usize, e: usize, n: i32): i32 {
   return sweeps
 }
 
-// A ← A + x xᵀ − y yᵀ on the lower triangle (the 4 × 4 diagonal blocks are kept full); order ld.
-export function rankTwo(A: usize, ldEntries: i32, x: usize, y: usize): void {
-  const ld = bytes(ldEntries)
-  for (let i = 0; i < ldEntries; i += 4) {
-    const r0 = A + <usize>i * ld
-    const r1 = r0 + ld
-    const r2 = r1 + ld
-    const r3 = r2 + ld
-    const x0 = both(at(x, i))
-    const x1 = both(at(x, i + 1))
-    const x2 = both(at(x, i + 2))
-    const x3 = both(at(x, i + 3))
-    const y0 = both(at(y, i))
-    const y1 = both(at(y, i + 1))
-    const y2 = both(at(y, i + 2))
-    const y3 = both(at(y, i + 3))
-    const end = bytes(i + 4)
-    for (let j: usize = 0; j < end; j += 16) {
-      const xj = pair(x + j)
-      const yj = pair(y + j)
-      put(r0 + j, minus(y0, yj, plus(x0, xj, pair(r0 + j))))
-      put(r1 + j, minus(y1, yj, plus(x1, xj, pair(r1 + j))))
-      put(r2 + j, minus(y2, yj, plus(x2, xj, pair(r2 + j))))
-      put(r3 + j, minus(y3, yj, plus(x3, xj, pair(r3 + j))))
-    }
-  }
-}
-
 // Vectors of the tridiagonal matrix (k rows of ld entries, pads zero) become vectors of A, by the Householder
 // vectors that `tridiagonalise` left in the rows of A: v ← (I − τ x xᵀ) v for i = 1 … n − 1.
 export function backTransform(A: usize, n: i32, ldEntries: i32, tau: usize, V: usize, k: i32): void {
