@@ -152,9 +152,10 @@ export class PartitionLane {
 
   /** Reads one value; the byte behind it is lent to the reader as the line feed that it needs. */
   #value(bytes: Buffer, from: number, to: number): void {
-    if (to < 0) {
+    if (to <= from) {
       this.out.nextRecord()
-      this.out.refuse('unreadable', 'a message without a value', bytes, from, from)
+      const detail = to < 0 ? 'a message without a value' : 'an empty message'
+      this.out.refuse('unreadable', detail, bytes, from, from)
       return
     }
     const behind = bytes[to]!

@@ -106,17 +106,17 @@ test('a batch whose records break off is read as far as it goes', async () => {
   expect(lane.next).toBe(5n)
 })
 
-test('messages without a value, and offsets beyond 2^53, keep their places', async () => {
+test('messages without a value, empty ones, and offsets beyond 2^53, keep their places', async () => {
   const base = 2n ** 60n
-  const batch = await recordBatch(0, [reading(1), null, reading(2), '{'])
+  const batch = await recordBatch(0, [reading(1), null, reading(2), '{', ''])
   batch.writeBigInt64BE(base)
   const lane = laneAt(base)
-  lane.take(await unpack(batch), base + 4n)
+  lane.take(await unpack(batch), base + 5n)
   expect(drain(lane)).toMatchObject({
     values: [1, 2],
-    places: [`${base + 1n} unreadable`, `${base + 3n} unreadable`],
+    places: [1n, 3n, 4n].map((delta) => `${base + delta} unreadable`),
   })
-  expect(lane.next).toBe(base + 4n)
+  expect(lane.next).toBe(base + 5n)
 })
 
 test('offsets left out by compaction or taken by control records do not hold the place back', async () => {

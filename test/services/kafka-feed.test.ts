@@ -264,10 +264,11 @@ test('rubbish among the messages is counted, kept with its offset, and stops not
   const got = collect(feedOf(inject('kafka'), topic, { limit: 1000 }))
   await until('caught up', async () => got.caughtUp.length === 1)
   expect(values(got)).toEqual([0, 1])
-  expect(got.dropped).toEqual({ unreadable: 3, 'bad-value': 1, 'too-long': 1 })
+  expect(got.dropped).toEqual({ unreadable: 4, 'bad-value': 1, 'too-long': 1 })
   expect(got.quarantined.map(({ position, reason }) => `${position} ${reason}`)).toEqual([
     '1 unreadable',
     '2 unreadable',
+    '3 unreadable',
     '4 unreadable',
     '5 bad-value',
     '6 too-long',
