@@ -8,7 +8,7 @@ import type { FeedEvent, Position } from './feed.ts'
 import { handOver } from './hand-over.ts'
 import { loginRefusal, messageOf } from './kafka-errors.ts'
 import type { KafkaRecording } from './kafka-feed.ts'
-import { KafkaSession, offsetsOf, type PartitionOffsets } from './kafka-session.ts'
+import { KafkaSession, longestWaitMs, offsetsOf, type PartitionOffsets } from './kafka-session.ts'
 import { NameTable } from './name-table.ts'
 import { PartitionLane } from './partition-lane.ts'
 import { readerFor } from './reader-for.ts'
@@ -20,7 +20,8 @@ const mostPerPartition = 4 * 1024 * 1024
 /** Readings in one batch of a partition. */
 const laneBatch = 8192
 const firstDelayMs = 500
-const longestDelayMs = 15_000
+/** Jitter makes it a fifth longer at most: 9.6 s. */
+const longestDelayMs = 8000
 
 /**
  * One subscription to a Kafka feed: session after session until it is stopped. The lanes outlive the
@@ -114,7 +115,7 @@ export class KafkaRun {
     const options = {
       topic,
       group,
-      maxWaitMs,
+      maxWaitMs: Math.min(longestWaitMs, Math.max(1, Math.round(maxWaitMs))),
       maxBytesPerPartition: Math.max(leastPerPartition, Math.floor(this.#perPartition / 2)),
       maxBytes: 8 * 1024 * 1024,
     }

@@ -1,9 +1,15 @@
 import type { Admin, Consumer, EachBatchPayload, Kafka } from 'kafkajs'
 import type { FeedLog, FeedTimer } from './context.ts'
 
-/** Seconds without any answer after which the brokers count as away, and after which the client is made anew. */
+/**
+ * Seconds without any answer, beyond the longest wait, after which the brokers count as away, and after which
+ * the client is made anew.
+ */
 const silenceTold = 4
 const silenceEnds = 40
+
+/** Between two fetches the client tells the group that it lives; its session is twice as long as this. */
+export const longestWaitMs = 5000
 
 /** Offsets of one partition as the brokers have them. */
 export interface PartitionOffsets {
@@ -19,6 +25,7 @@ export interface PartitionOffsets {
 export interface SessionOptions {
   readonly topic: string
   readonly group: string
+  /** At most `longestWaitMs`. */
   readonly maxWaitMs: number
   readonly maxBytesPerPartition: number
   readonly maxBytes: number
@@ -162,6 +169,7 @@ export class KafkaSession {
 
   /** Counts in ticks of a second, not by the clock: a process that was busy itself is no silent broker. */
   async #watch(timer: FeedTimer, stop: AbortSignal): Promise<void> {
+    const wait = Math.ceil(this.#options.maxWaitMs / 1000)
     let before = this.#answers
     let silence = 0
     while (!stop.aborted) {
@@ -169,8 +177,8 @@ export class KafkaSession {
       silence = this.#answers === before ? silence + 1 : 0
       before = this.#answers
       if (stop.aborted) return
-      if (silence === silenceTold) this.#listener.silent(`no answer for ${silenceTold} s`)
-      if (silence >= silenceEnds) this.#end(`no answer for ${silenceEnds} s`)
+      if (silence === silenceTold + wait) this.#listener.silent(`no answer for ${silence} s`)
+      if (silence >= silenceEnds + wait) this.#end(`no answer for ${silence} s`)
     }
   }
 }

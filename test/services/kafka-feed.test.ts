@@ -23,11 +23,13 @@ interface Options {
   readonly from?: 'earliest' | 'latest'
   readonly format?: FormatSettings
   readonly limit?: number
+  readonly maxWait?: number
 }
 
 const feedOf = (bootstrap: string, topic: string, options: Options = {}, more: Partial<FeedContext> = {}) => {
-  const { group = uniqueName('group'), from = 'earliest', format = 'ndjson', limit = 1 << 20 } = options
-  const kafka = { brokers: [bootstrap], topic, group, from, 'max-wait': 100, 'client-id': 'test' }
+  const { group = uniqueName('group'), from = 'earliest', format = 'ndjson' } = options
+  const { limit = 1 << 20, maxWait = 100 } = options
+  const kafka = { brokers: [bootstrap], topic, group, from, 'max-wait': maxWait, 'client-id': 'test' }
   return openFeed('ticks', { kafka, format, 'max-record-bytes': limit }, context(more))
 }
 
@@ -107,6 +109,16 @@ test('an empty partition is caught up at once, and later readings come', async (
   await send(inject('kafka'), topic, [0, 10], 2)
   await until('the readings', async () => got.readings.length === 10)
   expect(values(got)).toEqual(numbers(0, 10))
+})
+
+test('a quiet topic whose broker may hold its answers back for long does not count as lost', async () => {
+  const topic = await topicWith(1)
+  const got = collect(feedOf(inject('kafka'), topic, { maxWait: 60_000 }))
+  await until('caught up', async () => got.caughtUp.length === 1)
+  await new Promise((resolve) => setTimeout(resolve, 7000))
+  expect(got.events).toEqual(['connected', 'assigned', 'caught-up'])
+  await send(inject('kafka'), topic, [0, 10])
+  await until('the readings', async () => got.readings.length === 10)
 })
 
 test('"latest" begins with what is sent after the feed was opened', async () => {
