@@ -4,7 +4,7 @@ import type { FeedSettings, FormatSettings } from '../settings/schema.ts'
 import type { FeedContext } from './context.ts'
 import type { Feed, FeedEvent, Position } from './feed.ts'
 import { kafkaConfig } from './kafka-config.ts'
-import { loginRefusal, messageOf } from './kafka-errors.ts'
+import { loginRefusal, topicFailure } from './kafka-errors.ts'
 import { kafkaLibrary } from './kafka-library.ts'
 import { KafkaRun } from './kafka-run.ts'
 import { offsetsOf } from './kafka-session.ts'
@@ -76,9 +76,9 @@ export class KafkaFeed implements Feed {
     } catch (error) {
       if (error instanceof TautlineError) return { ok: false, detail: `${error.message} ${error.remedy}` }
       const refusal = loginRefusal(error)
-      const detail =
-        refusal === null ? messageOf(error) : new TautlineError('kafka-login', `${refusal}.`).message
-      return { ok: false, detail: `topic ${topic}: ${detail}` }
+      if (refusal === null) return { ok: false, detail: topicFailure(topic, error) }
+      const { message } = new TautlineError('kafka-login', `${refusal}.`)
+      return { ok: false, detail: `topic ${topic}: ${message}` }
     }
   }
 

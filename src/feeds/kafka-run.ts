@@ -6,7 +6,7 @@ import { type FeedContext, type FeedTimer, systemTimer } from './context.ts'
 import { escapeText } from './escape.ts'
 import type { FeedEvent, Position } from './feed.ts'
 import { handOver } from './hand-over.ts'
-import { loginRefusal, messageOf } from './kafka-errors.ts'
+import { loginRefusal, messageOf, topicFailure } from './kafka-errors.ts'
 import type { KafkaRecording } from './kafka-feed.ts'
 import { KafkaSession, longestWaitMs, offsetsOf, type PartitionOffsets } from './kafka-session.ts'
 import { NameTable } from './name-table.ts'
@@ -44,6 +44,8 @@ export class KafkaRun {
   #joined = false
   #connected = false
   #everConnected = false
+  /** Why it is cut off, as the log has it; null while connected. */
+  #told: string | null = null
   #perPartition = mostPerPartition
 
   constructor(
@@ -73,7 +75,7 @@ export class KafkaRun {
       } catch (error) {
         const refusal = loginRefusal(error)
         if (refusal !== null && !this.#everConnected) throw new TautlineError('kafka-login', `${refusal}.`)
-        detail = `topic ${this.#recording.kafka.topic}: ${messageOf(error)}`
+        detail = topicFailure(this.#recording.kafka.topic, error)
       }
       if (this.#stop.aborted) return
       if (this.#joined) delay = firstDelayMs
@@ -271,13 +273,18 @@ export class KafkaRun {
     if (this.#connected) return
     this.#connected = true
     this.#everConnected = true
+    this.#told = null
     this.#to.next({ type: 'connected' })
   }
 
   #lost(detail: string): void {
     const told = escapeText(detail)
-    if (this.#connected)
-      this.#context.log('warn', 'the Kafka brokers are away', { feed: this.#name, detail: told })
+    if (told !== this.#told)
+      this.#context.log('warn', 'the Kafka feed is cut off; it tries again until it is back', {
+        feed: this.#name,
+        detail: told,
+      })
+    this.#told = told
     this.#connected = false
     this.#to.next({ type: 'disconnected', detail: told })
   }

@@ -1,5 +1,6 @@
 import type { Admin, Consumer, EachBatchPayload, Kafka } from 'kafkajs'
 import type { FeedLog, FeedTimer } from './context.ts'
+import { topicFailure } from './kafka-errors.ts'
 
 /**
  * Seconds without any answer, beyond the longest wait, after which the brokers count as away, and after which
@@ -164,7 +165,7 @@ export class KafkaSession {
       this.#answers++
       if (this.#open) this.#listener.answered()
     })
-    this.#consumer.on(events.CRASH, ({ payload }) => this.#end(payload.error.message))
+    this.#consumer.on(events.CRASH, ({ payload }) => this.#end(topicFailure(topic, payload.error)))
   }
 
   /** Counts in ticks of a second, not by the clock: a process that was busy itself is no silent broker. */

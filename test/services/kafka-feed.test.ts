@@ -334,7 +334,10 @@ test('check names the partitions and what waits, and says when topic or broker a
   const good = await feedOf(inject('kafka'), topic).check()
   expect(good).toMatchObject({ ok: true, detail: expect.stringContaining('3 partitions with 12 messages') })
   const missing = await feedOf(inject('kafka'), uniqueName('nowhere')).check()
-  expect(missing).toMatchObject({ ok: false, detail: expect.stringContaining('does not host this topic') })
+  expect(missing).toMatchObject({
+    ok: false,
+    detail: expect.stringContaining('the brokers know no topic nowhere-'),
+  })
   const away = await feedOf('127.0.0.1:1', topic).check()
   expect(away).toMatchObject({ ok: false, detail: expect.stringMatching(/ECONNREFUSED|Connection/) })
 })
@@ -343,10 +346,30 @@ test('a topic that does not exist yet is waited for', async () => {
   const topic = uniqueName('later')
   const got = collect(feedOf(inject('kafka'), topic))
   await until('told', async () => got.details.length > 0)
-  expect(got.details[0]).toContain(topic)
+  expect(got.details[0]).toBe(`the brokers know no topic ${topic}`)
+  expect(log.filter((line) => line.includes(`the brokers know no topic ${topic}`))).toHaveLength(1)
   await createTopic(inject('kafka'), topic, 1)
   await send(inject('kafka'), topic, [0, 5])
   await until('the readings', async () => got.readings.length === 5)
+  expect(got.error).toBeNull()
+})
+
+test('a topic that is deleted is told and waited for, and read anew when it is back', async () => {
+  const topic = await topicWith(2)
+  await send(inject('kafka'), topic, [0, 100], 2)
+  const got = collect(feedOf(inject('kafka'), topic))
+  await until('the readings', async () => got.readings.length === 100)
+  const admin = kafkaClient(inject('kafka')).admin()
+  await admin.connect()
+  await admin.deleteTopics({ topics: [topic] })
+  await admin.disconnect()
+  await until('told', async () => got.details.includes(`the brokers know no topic ${topic}`))
+  await createTopic(inject('kafka'), topic, 2)
+  const isBack = () => got.events.lastIndexOf('connected') > got.events.lastIndexOf('disconnected')
+  await until('back', async () => isBack())
+  await send(inject('kafka'), topic, [100, 150], 2)
+  await until('the readings', async () => got.readings.length === 150)
+  expect(values(got)).toEqual(numbers(0, 150))
   expect(got.error).toBeNull()
 })
 
