@@ -76,6 +76,16 @@ async function decodePacked(decoder: FetchDecoder): Promise<{ records: unknown[]
   return { records: [message] }
 }
 
+/**
+ * Offset of the first record that the broker sent of a fetched batch, those of aborted transactions included
+ * (`messages` is without them); null when it sent none.
+ */
+export function firstOffset(batch: Library.Batch): bigint | null {
+  const { rawMessages } = batch as Library.Batch & { readonly rawMessages?: readonly PackedMessage[] }
+  const first = rawMessages?.[0]
+  return first === undefined ? null : (first.batch?.base ?? BigInt(first.offset))
+}
+
 let loaded: typeof Library | null = null
 
 /** The copy of kafkajs with the decoder replaced; loaded when it is first needed. */

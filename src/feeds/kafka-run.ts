@@ -8,6 +8,7 @@ import type { FeedEvent, Position } from './feed.ts'
 import { handOver } from './hand-over.ts'
 import { loginRefusal, messageOf, topicFailure } from './kafka-errors.ts'
 import type { KafkaRecording } from './kafka-feed.ts'
+import { firstOffset } from './kafka-library.ts'
 import { KafkaSession, longestWaitMs, offsetsOf, type PartitionOffsets } from './kafka-session.ts'
 import { NameTable } from './name-table.ts'
 import { PartitionLane } from './partition-lane.ts'
@@ -127,6 +128,7 @@ export class KafkaRun {
         const lane = this.#lanes.get(batch.partition)
         if (lane === undefined || !this.#owned.has(batch.partition)) return false
         this.#checkEnd(lane, BigInt(batch.highWatermark))
+        this.#checkGap(lane, firstOffset(batch))
         lane.take(batch.messages, BigInt(batch.lastOffset()) + 1n)
         this.#setPaused(lane)
         void this.#give(lane)
@@ -165,7 +167,7 @@ export class KafkaRun {
       for (const found of offsets) {
         const lane = this.#lanes.get(found.partition) ?? this.#addLane(found)
         if (lane.next < found.low && lane.isEmpty) {
-          this.#warn(lane, 'the broker has deleted records before they were read', found.low)
+          this.#checkGap(lane, found.low)
           lane.restartAt(found.low)
         }
         this.#checkEnd(lane, found.high)
@@ -192,8 +194,19 @@ export class KafkaRun {
   #checkEnd(lane: PartitionLane, end: bigint): void {
     lane.end = end
     if (end >= lane.next) return
-    this.#warn(lane, 'the partition ends before the place that was reached: it was cut or made anew', end)
+    const message = 'the partition ends before the place that was reached: it was cut or made anew'
+    this.#tell('warn', lane, message, lane.next, end)
     lane.restartAt(end)
+  }
+
+  /** Records that are not there any more when they are asked for: kafkajs goes on at the first that is. */
+  #checkGap(lane: PartitionLane, first: bigint | null): void {
+    const { elsewhere, fetched } = lane
+    lane.elsewhere = false
+    if (elsewhere || first === null || first <= fetched) return
+    const level = lane.gapTold ? 'debug' : 'warn'
+    lane.gapTold = true
+    this.#tell(level, lane, 'records were deleted or compacted away before they were read', fetched, first)
   }
 
   #assigned(now: ReadonlySet<number>): void {
@@ -207,8 +220,8 @@ export class KafkaRun {
     for (const partition of now) {
       const lane =
         this.#lanes.get(partition) ?? this.#addLane({ partition, low: 0n, high: 0n, committed: 0n })
-      if (before.has(partition) || !this.#hadBefore.has(partition))
-        this.#session?.seek(partition, lane.fetched)
+      lane.elsewhere = !before.has(partition) && this.#hadBefore.has(partition)
+      if (!lane.elsewhere) this.#session?.seek(partition, lane.fetched)
       this.#hadBefore.add(partition)
       lane.paused = false
       this.#session?.resume(partition)
@@ -267,6 +280,7 @@ export class KafkaRun {
     const now = lane.isEmpty && lane.next >= lane.end
     if (now && !lane.caughtUp) this.#to.next({ type: 'caught-up', source: lane.source })
     lane.caughtUp = now
+    if (now) lane.gapTold = false
   }
 
   #found(): void {
@@ -289,13 +303,9 @@ export class KafkaRun {
     this.#to.next({ type: 'disconnected', detail: told })
   }
 
-  #warn(lane: PartitionLane, message: string, goesOnAt: bigint): void {
-    this.#context.log('warn', message, {
-      feed: this.#name,
-      source: lane.source,
-      reached: String(lane.next),
-      'goes-on-at': String(goesOnAt),
-    })
+  #tell(level: 'debug' | 'warn', lane: PartitionLane, message: string, reached: bigint, at: bigint): void {
+    const fields = { source: lane.source, reached: String(reached), 'goes-on-at': String(at) }
+    this.#context.log(level, message, { feed: this.#name, ...fields })
   }
 }
 

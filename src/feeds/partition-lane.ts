@@ -31,6 +31,10 @@ export class PartitionLane {
   /** A batch is being given out. */
   busy = false
   caughtUp = false
+  /** The group says where the next fetch begins: another member may have read on meanwhile. */
+  elsewhere = false
+  /** A gap was told since it was last caught up; a compacted topic has one after another. */
+  gapTold = false
   readonly #reader: RecordReader
   readonly #queue: Fetched[] = []
   #walk: { readonly walk: RecordWalk; readonly batch: RecordBatch } | null = null

@@ -244,6 +244,29 @@ test('a held partition gives nothing until it is released, the others go on', as
   expect(values(got)).toEqual(numbers(0, 100_000))
 })
 
+test('records that retention deleted before they were read are told, and reading goes on behind them', async () => {
+  const topic = await topicWith(1)
+  const feed = feedOf(inject('kafka'), topic)
+  const got = collect(feed)
+  await until('assigned', async () => got.assigned.length === 1)
+  feed.hold(`${topic}/0`, true)
+  await send(inject('kafka'), topic, [0, 200_000])
+  const admin = kafkaClient(inject('kafka')).admin()
+  await admin.connect()
+  await admin.fetchTopicMetadata({ topics: [topic] })
+  await admin.fetchTopicOffsets(topic)
+  await admin.deleteTopicRecords({ topic, partitions: [{ partition: 0, offset: '195000' }] })
+  await admin.disconnect()
+  feed.hold(`${topic}/0`, false)
+  await until('the end', async () => got.position[`${topic}/0`] === '200000')
+  const reached = got.readings.length - 5000
+  expect(reached).toBeLessThan(195_000)
+  expect(values(got)).toEqual([...numbers(0, reached), ...numbers(195_000, 200_000)])
+  const told = log.filter((line) => line.startsWith('warn records were deleted') && line.includes(topic))
+  expect(told).toHaveLength(1)
+  expect(told[0]).toContain(`"reached":"${reached}","goes-on-at":"195000"`)
+})
+
 test('partitions go over to a second member of the group and come back when it leaves', async () => {
   const topic = await topicWith(4)
   const group = uniqueName('group')
