@@ -479,7 +479,15 @@ test('a broker stopped and killed under load: the feed comes back by itself, not
   try {
     const topic = uniqueName('outage')
     await broker.createTopic(topic, 3)
-    const got = collect(feedOf(broker.bootstrap, topic))
+    const group = uniqueName('group')
+    const feed = feedOf(broker.bootstrap, topic, { group })
+    const got = collect(feed)
+    const committer = (async () => {
+      while (sending) {
+        await feed.commit(got.position)
+        await new Promise((resolve) => setTimeout(resolve, 200))
+      }
+    })()
     const sender = (async () => {
       for (let i = 0; sending; i += 300) {
         await send(broker.bootstrap, topic, [i, i + 300], 3).catch(() => {})
@@ -500,11 +508,10 @@ test('a broker stopped and killed under load: the feed comes back by itself, not
       expect(got.events.lastIndexOf('connected')).toBeGreaterThan(got.events.lastIndexOf('disconnected'))
     }
     sending = false
-    await sender
+    await Promise.all([sender, committer])
     const admin = kafkaClient(broker.bootstrap).admin()
     await admin.connect()
     const ends = await admin.fetchTopicOffsets(topic)
-    await admin.disconnect()
     const total = ends.reduce((sum, { high }) => sum + Number(high), 0)
     await until('all readings', async () => got.readings.length >= total)
     await new Promise((resolve) => setTimeout(resolve, 500))
@@ -516,6 +523,11 @@ test('a broker stopped and killed under load: the feed comes back by itself, not
       expect(inOrder(got)).toEqual(inOrder(undisturbed))
     }
     undisturbed.stop()
+    await feed.commit(got.position)
+    const [committed] = await admin.fetchOffsets({ groupId: group, topics: [topic] })
+    await admin.disconnect()
+    const kept = committed!.partitions.map(({ partition, offset }) => [`${topic}/${partition}`, offset])
+    expect(Object.fromEntries(kept)).toEqual(got.position)
     expect(got.readings.length).toBe(total)
     expect(got.position).toEqual(
       Object.fromEntries(ends.map(({ partition, high }) => [`${topic}/${partition}`, high])),
